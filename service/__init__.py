@@ -1,0 +1,1 @@
+"""The service: a workshop's coil winding jobs, from recipe to judged coil."""
