@@ -114,7 +114,11 @@ def test_the_sheet_is_the_average_over_its_circles() -> None:
     # Each distance z weighs as many pairs as lie so far apart: L = 2/l2 integral of (l - z) M(z).
     a, length = 0.02, 0.03
     total, _ = quad(
-        lambda z: (length - z) * mutual_inductance_of_circles(a, a, z), 0.0, length, epsrel=1e-11
+        lambda z: (length - z) * mutual_inductance_of_circles(a, a, z),
+        0.0,
+        length,
+        epsabs=0.0,
+        epsrel=1e-11,
     )
     average = 2.0 * total / length**2
     assert solenoid_inductance(a, length, 1.0) == pytest.approx(average, rel=1e-9)
