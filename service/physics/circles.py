@@ -68,15 +68,30 @@ def solenoid_inductance(radius: float, length: float, turns: float) -> float:
     a = positive("radius", radius)
     long = positive("length", length)
     n = non_negative("turns", turns)
-    shape = long / a
+    endless = MAGNETIC_CONSTANT * math.pi * a * a * n * n / long
+    return endless * nagaoka_coefficient(long / (2.0 * a))
+
+
+def nagaoka_coefficient(length_over_diameter: float) -> float:
+    """Return a current sheet's inductance over that of as long a part of an endless one.
+
+    Args:
+        length_over_diameter: of the sheet.
+
+    Returns:
+        Nagaoka's coefficient, between 0 (short) and 1 (long); relative error below 1e-12.
+
+    Raises:
+        ValueError: the ratio is not positive.
+    """
+    shape = 2.0 * positive("length_over_diameter", length_over_diameter)
     if shape < _SHORT_SHEET:
-        return MAGNETIC_CONSTANT * a * n * n * _short_sheet(shape)
-    coefficient = _nagaoka_coefficient(shape)
-    return MAGNETIC_CONSTANT * math.pi * a * n * n * coefficient / shape
+        return shape / math.pi * _short_sheet(shape)
+    return _by_elliptic_integrals(shape)
 
 
-def _nagaoka_coefficient(shape: float) -> float:
-    """Inductance over that of as long a part of an endless solenoid; `shape` = length/radius."""
+def _by_elliptic_integrals(shape: float) -> float:
+    """Nagaoka's coefficient in closed form; `shape` = length/radius."""
     diagonal = math.hypot(shape, 2.0)
     modulus = 2.0 / diagonal
     complementary = shape / diagonal
@@ -89,7 +104,7 @@ def _nagaoka_coefficient(shape: float) -> float:
 
 
 def _short_sheet(shape: float) -> float:
-    """Coffin's series (1906) for a sheet much shorter than its radius; `shape` = length/radius."""
+    """Inductance over mu0 a N2 of a sheet much shorter than its radius: Coffin's series (1906)."""
     log = math.log(8.0 / shape)
     square = shape * shape
     return log - 0.5 + square / 32.0 * (log + 0.25) - square * square / 1024.0 * (log - 2.0 / 3.0)
