@@ -1,0 +1,1 @@
+"""Where records are kept: engine, sessions, column types, record chain, group-commit writer."""
