@@ -33,6 +33,14 @@ class AttemptEnded:
 
 
 @dataclass(frozen=True)
+class MachineTurns:
+    """The counters' answer to AttemptEnded: what the machine counted, and what is open about it."""
+
+    turns: float
+    questions: int
+
+
+@dataclass(frozen=True)
 class Measured:
     """A coil was measured and judged; differences are standardised (measured less expected)."""
 
