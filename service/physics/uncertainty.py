@@ -26,6 +26,14 @@ _LEAST_OF_UNCERTAINTY: Final = 1e-3
 _LEAST_OF_ESTIMATE: Final = 1e-6
 
 
+@dataclass(frozen=True, slots=True)
+class Estimate:
+    """A value and its standard uncertainty, both in the quantity's unit."""
+
+    value: float
+    standard_uncertainty: float
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Propagated:
     """Results of the linear law: values and their covariance, in the order of the outputs."""
