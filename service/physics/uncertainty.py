@@ -91,12 +91,33 @@ def propagate(function: Function, estimates: ArrayLike, covariance: ArrayLike) -
     x = _vector("estimates", estimates)
     c = _covariance("covariance", covariance, x.size)
     values = _outputs(function, x)
-    jacobian = np.zeros((values.size, x.size))
-    for index, u in enumerate(np.sqrt(np.diag(c))):
-        if u > 0.0:  # what has no uncertainty needs no sensitivity
-            jacobian[:, index] = _sensitivity(function, x, index, float(u), values.size)
+    jacobian = sensitivities(function, x, np.sqrt(np.diag(c)))
     product = jacobian @ c @ jacobian.T
     return Propagated(values, (product + product.T) / 2.0)
+
+
+def sensitivities(function: Function, estimates: ArrayLike, scales: ArrayLike) -> FloatArray:
+    """Return the derivatives of the outputs (down) by the inputs (across) at the estimates.
+
+    Args:
+        function: as in `propagate`.
+        estimates: the inputs' estimates.
+        scales: for each input, over how much of it the derivative is wanted: its standard
+            uncertainty. An input with scale 0 is not moved and has zeros.
+
+    Raises:
+        ValueError: as `propagate`, or a negative scale.
+    """
+    x = _vector("estimates", estimates)
+    widths = _vector("scales", scales)
+    if widths.shape != x.shape or (widths < 0.0).any():
+        raise ValueError(f"scales must be {x.size} numbers from 0 up, got {widths.tolist()!r}")
+    outputs = _outputs(function, x).size
+    jacobian = np.zeros((outputs, x.size))
+    for index, width in enumerate(widths.tolist()):
+        if width > 0.0:
+            jacobian[:, index] = _sensitivity(function, x, index, width, outputs)
+    return jacobian
 
 
 def propagate_by_sampling(function: Function, draws: ArrayLike) -> Sampled:

@@ -12,6 +12,7 @@ from service.physics.uncertainty import (
     conformance_probability,
     propagate,
     propagate_by_sampling,
+    sensitivities,
 )
 
 numbers = st.floats(min_value=-100.0, max_value=100.0)
@@ -64,6 +65,17 @@ def test_an_input_without_uncertainty_is_not_moved() -> None:
 
     propagate(function, [2.0, 3.0], [[0.01, 0.0], [0.0, 0.0]])
     assert set(seen) == {3.0}
+
+
+def test_sensitivities_are_the_derivatives() -> None:
+    found = sensitivities(lambda p: [p[0] ** 2 * p[1], math.sin(p[1])], [3.0, 0.5], [0.1, 0.2])
+    assert found == pytest.approx(np.array([[3.0, 9.0], [0.0, math.cos(0.5)]]), abs=1e-9)
+
+
+@pytest.mark.parametrize("scales", [[0.1], [0.1, -0.1], [0.1, math.nan]])
+def test_impossible_scales_are_named(scales: list[float]) -> None:
+    with pytest.raises(ValueError, match="scales"):
+        sensitivities(lambda p: p[0], [1.0, 2.0], scales)
 
 
 def test_outputs_without_uncertainty_have_no_correlation() -> None:
