@@ -45,9 +45,11 @@ def make_engine(url: str, *, read_only: bool = False, foreign_keys: bool = True)
 
 
 def _sqlite_engine(address: sa.URL, *, read_only: bool, foreign_keys: bool) -> Engine:
+    pool: dict[str, int] = {}
     if address.database:
         Path(address.database).parent.mkdir(parents=True, exist_ok=True)
-    engine = sa.create_engine(address, pool_size=20, max_overflow=40)
+        pool = {"pool_size": 20, "max_overflow": 40}
+    engine = sa.create_engine(address, **pool)
 
     @event.listens_for(engine, "connect")
     def _set_up(connection: SqliteConnection, _record: object) -> None:

@@ -7,7 +7,7 @@ or put in later shows at ``coilwright verify``.
 import hashlib
 import json
 import uuid
-from collections.abc import Iterator
+from collections.abc import Iterable
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from typing import Any
@@ -138,19 +138,22 @@ class Break:
 
 def verify(session: Session) -> tuple[int, Break | None]:
     """Walk the chain; the number of acts that hold, and the first break."""
-    expected_position, previous = 1, GENESIS
-    for act in _all(session):
-        if act.position != expected_position:
-            return expected_position - 1, Break(expected_position, "an act is missing")
-        if act.previous_hash != previous:
-            return expected_position - 1, Break(act.position, "does not follow the act before it")
-        if act.hash != digest(act):
-            return expected_position - 1, Break(act.position, "content was altered")
-        previous = act.hash
-        expected_position += 1
-    return expected_position - 1, None
-
-
-def _all(session: Session) -> Iterator[Act]:
     statement = sa.select(Act).order_by(Act.position).execution_options(yield_per=1000)
-    yield from session.scalars(statement)
+    rows = session.scalars(statement)
+    try:
+        return _walk(rows)
+    finally:
+        rows.close()
+
+
+def _walk(acts: Iterable[Act]) -> tuple[int, Break | None]:
+    held, previous = 0, GENESIS
+    for act in acts:
+        if act.position != held + 1:
+            return held, Break(held + 1, "an act is missing")
+        if act.previous_hash != previous:
+            return held, Break(act.position, "does not follow the act before it")
+        if act.hash != digest(act):
+            return held, Break(act.position, "content was altered")
+        held, previous = act.position, act.hash
+    return held, None

@@ -18,8 +18,8 @@ from service.storage.migrate import alembic_config, is_current, migrate
 
 
 @pytest.fixture
-def engine(database_url: str) -> Iterator[sa.Engine]:
-    engine = make_engine(database_url, foreign_keys=False)
+def engine(fresh_database_url: str) -> Iterator[sa.Engine]:
+    engine = make_engine(fresh_database_url, foreign_keys=False)
     yield engine
     engine.dispose()
 
@@ -55,6 +55,10 @@ def parts_of(statement: str) -> list[str]:
     return sorted(part.strip().rstrip(",") for part in re.split(r",(?![^(]*\))", flat))
 
 
+def named(connection: sa.Connection, query: str) -> dict[str, str]:
+    return {row[0]: row[1] for row in connection.execute(sa.text(query))}
+
+
 def test_the_migrated_tables_carry_every_constraint_of_the_models(
     tmp_path: Path, sqlite_template: Path
 ) -> None:
@@ -64,9 +68,9 @@ def test_the_migrated_tables_carry_every_constraint_of_the_models(
     migrated = make_engine(f"sqlite:///{sqlite_template}")
     query = "SELECT name, sql FROM sqlite_master WHERE sql IS NOT NULL AND name NOT LIKE 'alembic%'"
     with made.connect() as connection:
-        wanted = dict(connection.execute(sa.text(query)).tuples().all())
+        wanted = named(connection, query)
     with migrated.connect() as connection:
-        found = dict(connection.execute(sa.text(query)).tuples().all())
+        found = named(connection, query)
     assert set(found) == set(wanted)
     for name, statement in wanted.items():
         assert parts_of(found[name]) == parts_of(statement), name
@@ -76,12 +80,12 @@ def test_the_migrated_tables_carry_every_constraint_of_the_models(
 
 
 def test_a_database_of_a_newer_program_is_refused_and_left_alone(
-    database_url: str, engine: sa.Engine
+    fresh_database_url: str, engine: sa.Engine
 ) -> None:
     with engine.connect() as connection, connection.begin():
         connection.execute(sa.text("UPDATE alembic_version SET version_num = 'from_the_future'"))
     with pytest.raises(SetupError, match="not known to this version"):
-        migrate(database_url)
+        migrate(fresh_database_url)
     with engine.connect() as connection:
         assert (
             connection.scalar(sa.text("SELECT version_num FROM alembic_version"))
@@ -99,8 +103,8 @@ def test_two_processes_that_migrate_at_once_both_end_at_the_newest(tmp_path: Pat
     engine.dispose()
 
 
-def test_migrating_again_changes_nothing(database_url: str) -> None:
-    migrate(database_url)
-    engine = make_engine(database_url)
+def test_migrating_again_changes_nothing(fresh_database_url: str) -> None:
+    migrate(fresh_database_url)
+    engine = make_engine(fresh_database_url)
     assert is_current(engine)
     engine.dispose()
