@@ -130,10 +130,10 @@ class RodModes:
         eddy = np.asarray(at_once + interior.T @ (left[:, None] * interior), dtype=np.complex128)
         eddy *= 1j * diffusion
         unit = np.eye(len(eddy))
-        rest: Complexes = susceptibility / permeability * unit - eddy
-        held: Complexes = unit / permeability + eddy + rest * self.factors
-        answer: Complexes = np.linalg.solve(held, rest)
-        return 0.5 * (answer + answer.T)
+        rest = susceptibility / permeability * unit - eddy
+        held = unit / permeability + eddy + rest * self.factors
+        answer = np.linalg.solve(held, rest)
+        return np.asarray(0.5 * (answer + answer.T), dtype=np.complex128)
 
 
 @lru_cache(maxsize=32)
