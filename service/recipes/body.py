@@ -14,7 +14,7 @@ from pydantic_core.core_schema import ValidationInfo
 from service.errors import InvalidValue
 from service.physics.voice_coil import former_material
 from service.physics.wire import available_designations, standard_wire
-from service.web.schemas import Body
+from service.web.schemas import Body, Flag, Number, Whole
 
 EXAMPLE: Final[dict[str, Any]] = {
     "former": {
@@ -76,20 +76,16 @@ VOICE_COIL_EXAMPLE: Final[dict[str, Any]] = {
 Text = Annotated[str, Field(strict=True, min_length=1, max_length=60)]
 
 
-def _number(**limits: float) -> Any:
-    return Field(strict=True, allow_inf_nan=False, **limits)
-
-
 class FormerPart(Body):
     """A former as a rounded rectangle: round with both straights 0, a racetrack with one."""
 
-    straight_x_mm: Annotated[float, _number(ge=0, le=500)]
-    straight_y_mm: Annotated[float, _number(ge=0, le=500)]
-    corner_radius_mm: Annotated[float, _number(ge=0, le=250)] = Field(
+    straight_x_mm: Annotated[Number, Field(ge=0, le=500)]
+    straight_y_mm: Annotated[Number, Field(ge=0, le=500)]
+    corner_radius_mm: Annotated[Number, Field(ge=0, le=250)] = Field(
         description="Of the innermost turn; half the diameter of a round former."
     )
-    winding_height_mm: Annotated[float, _number(ge=0.1, le=500)]
-    flange_build_mm: Annotated[float, _number(gt=0, le=250)] | None = Field(
+    winding_height_mm: Annotated[Number, Field(ge=0.1, le=500)]
+    flange_build_mm: Annotated[Number, Field(gt=0, le=250)] | None = Field(
         default=None, description="Depth that the flanges or the gap leave; null for no limit."
     )
 
@@ -102,10 +98,10 @@ class WirePart(Body):
     ] = "copper"
     size: Text = Field(description="'AWG 20' to 'AWG 46', or a metric size like '0.063 mm'.")
     build: Text = Field(description="single or heavy (AWG); grade 1 or grade 2 (metric).")
-    spool_resistance_ohm_per_m: Annotated[float, _number(ge=1e-3, le=1e3)] | None = Field(
+    spool_resistance_ohm_per_m: Annotated[Number, Field(ge=1e-3, le=1e3)] | None = Field(
         default=None, description="Measured on the spool, at 20 °C; null if not measured."
     )
-    spool_standard_uncertainty_ohm_per_m: Annotated[float, _number(ge=0, le=100)] | None = Field(
+    spool_standard_uncertainty_ohm_per_m: Annotated[Number, Field(ge=0, le=100)] | None = Field(
         default=None, description="0.5 % of the value if null."
     )
 
@@ -149,15 +145,15 @@ class ScatterPart(Body):
     """How the wire is spread over the winding height."""
 
     traverse: Literal["triangle", "sine", "stepped", "hand"]
-    turns_per_pass: Annotated[float, _number(ge=1, le=10_000)] = Field(
+    turns_per_pass: Annotated[Number, Field(ge=1, le=10_000)] = Field(
         description="Turns from one flange to the other."
     )
-    wander_mm: Annotated[float, _number(ge=0, le=50)] = Field(
+    wander_mm: Annotated[Number, Field(ge=0, le=50)] = Field(
         description="Standard deviation of a turn's place from the guide's."
     )
-    edge_dwell_turns: Annotated[float, _number(ge=0, le=1_000)] = 0.0
-    tension_n: Annotated[float, _number(ge=0, le=50)]
-    seed: Annotated[int, Field(strict=True, ge=0, le=2**32 - 1)] = Field(
+    edge_dwell_turns: Annotated[Number, Field(ge=0, le=1_000)] = 0.0
+    tension_n: Annotated[Number, Field(ge=0, le=50)]
+    seed: Annotated[Whole, Field(ge=0, le=2**32 - 1)] = Field(
         default=0, description="The same seed gives the same random lay."
     )
 
@@ -165,13 +161,13 @@ class ScatterPart(Body):
 class PolesPart(Body):
     """A row of rods along the longer straight side, centred in the coil."""
 
-    count: Annotated[int, Field(strict=True, ge=1, le=24)]
-    diameter_mm: Annotated[float, _number(ge=0.5, le=200)]
-    length_mm: Annotated[float, _number(ge=0.5, le=500)]
-    pitch_mm: Annotated[float, _number(ge=0, le=200)] = Field(
+    count: Annotated[Whole, Field(ge=1, le=24)]
+    diameter_mm: Annotated[Number, Field(ge=0.5, le=200)]
+    length_mm: Annotated[Number, Field(ge=0.5, le=500)]
+    pitch_mm: Annotated[Number, Field(ge=0, le=200)] = Field(
         default=0.0, description="From rod to rod; not looked at for a single rod."
     )
-    offset_mm: Annotated[float, _number(ge=-250, le=250)] = Field(
+    offset_mm: Annotated[Number, Field(ge=-250, le=250)] = Field(
         default=0.0, description="Of the rods' middle above the middle of the winding."
     )
     material: Text
@@ -180,33 +176,33 @@ class PolesPart(Body):
 class CorePart(Body):
     """A pole piece on the axis of a round coil."""
 
-    diameter_mm: Annotated[float, _number(ge=0.5, le=500)]
-    length_mm: Annotated[float, _number(ge=0.5, le=500)]
-    offset_mm: Annotated[float, _number(ge=-250, le=250)] = 0.0
+    diameter_mm: Annotated[Number, Field(ge=0.5, le=500)]
+    length_mm: Annotated[Number, Field(ge=0.5, le=500)]
+    offset_mm: Annotated[Number, Field(ge=-250, le=250)] = 0.0
     material: Text
 
 
 class StringPart(Body):
     """The string that the output is predicted for; it swings over the middle rod."""
 
-    diameter_mm: Annotated[float, _number(ge=0.1, le=3)] = Field(
+    diameter_mm: Annotated[Number, Field(ge=0.1, le=3)] = Field(
         default=0.43, description="Of the ferrous core."
     )
-    distance_mm: Annotated[float, _number(ge=0.5, le=30)] = Field(
+    distance_mm: Annotated[Number, Field(ge=0.5, le=30)] = Field(
         default=3.0, description="From the rod's top to the string's middle at rest."
     )
-    amplitude_mm: Annotated[float, _number(ge=0, le=20)] = 0.5
-    frequency_hz: Annotated[float, _number(ge=10, le=10_000)] = 196.0
-    ferrous: Annotated[bool, Field(strict=True)] = True
+    amplitude_mm: Annotated[Number, Field(ge=0, le=20)] = 0.5
+    frequency_hz: Annotated[Number, Field(ge=10, le=10_000)] = 196.0
+    ferrous: Flag = True
 
 
 class ConditionsPart(Body):
     """At what the coil is measured, and the motor that a voice coil works in."""
 
-    temperature_c: Annotated[float, _number(ge=-40, le=150)] = 20.0
-    test_frequency_hz: Annotated[float, _number(ge=1, le=1e6)] = 1000.0
-    gap_flux_density_t: Annotated[float, _number(ge=0, le=3)] | None = None
-    gap_height_mm: Annotated[float, _number(gt=0, le=200)] | None = None
+    temperature_c: Annotated[Number, Field(ge=-40, le=150)] = 20.0
+    test_frequency_hz: Annotated[Number, Field(ge=1, le=1e6)] = 1000.0
+    gap_flux_density_t: Annotated[Number, Field(ge=0, le=3)] | None = None
+    gap_height_mm: Annotated[Number, Field(gt=0, le=200)] | None = None
 
 
 class StageLimitPart(Body):
@@ -214,8 +210,8 @@ class StageLimitPart(Body):
 
     stage: Literal["raw", "potted", "final"]
     characteristic: Literal["resistance", "inductance", "self_resonance", "quality_factor"]
-    lower: Annotated[float, _number(ge=-1e9, le=1e9)] | None = None
-    upper: Annotated[float, _number(ge=-1e9, le=1e9)] | None = None
+    lower: Annotated[Number, Field(ge=-1e9, le=1e9)] | None = None
+    upper: Annotated[Number, Field(ge=-1e9, le=1e9)] | None = None
     kind: Literal["relative", "absolute"] = Field(
         description="relative: in % from the nominal value; absolute: in ohm, H, Hz or 1."
     )
@@ -238,13 +234,13 @@ class StageLimitPart(Body):
 class TolerancePart(Body):
     """What the customer allows."""
 
-    resistance_percent: Annotated[float, _number(gt=0, le=100)] | None = None
-    inductance_percent: Annotated[float, _number(gt=0, le=100)] | None = None
-    turns: Annotated[int, Field(strict=True, ge=0, le=10_000)] | None = None
-    nominal_resistance_ohm: Annotated[float, _number(gt=0, le=1e7)] | None = Field(
+    resistance_percent: Annotated[Number, Field(gt=0, le=100)] | None = None
+    inductance_percent: Annotated[Number, Field(gt=0, le=100)] | None = None
+    turns: Annotated[Whole, Field(ge=0, le=10_000)] | None = None
+    nominal_resistance_ohm: Annotated[Number, Field(gt=0, le=1e7)] | None = Field(
         default=None, description="At 20 °C; the recipe's own expectation if null."
     )
-    nominal_inductance_h: Annotated[float, _number(gt=0, le=1e4)] | None = Field(
+    nominal_inductance_h: Annotated[Number, Field(gt=0, le=1e4)] | None = Field(
         default=None, description="The recipe's own expectation if null."
     )
     stage_limits: Annotated[list[StageLimitPart], Field(max_length=24)] = Field(
@@ -259,9 +255,9 @@ class RecipeBody(Body):
 
     former: FormerPart
     wire: WirePart
-    turns: Annotated[int, Field(strict=True, ge=1, le=100_000)]
+    turns: Annotated[Whole, Field(ge=1, le=100_000)]
     scatter: ScatterPart | None = Field(default=None, description="Null for even layers.")
-    layers: Annotated[int, Field(strict=True, ge=1, le=200)] | None = Field(
+    layers: Annotated[Whole, Field(ge=1, le=200)] | None = Field(
         default=None, description="Number of even layers; null to fill the height."
     )
     poles: PolesPart | None = None
@@ -269,13 +265,13 @@ class RecipeBody(Body):
     former_material: Text | None = Field(
         default=None, description="A closed metal former is a shorted turn."
     )
-    former_thickness_mm: Annotated[float, _number(gt=0, le=20)] | None = None
-    former_length_mm: Annotated[float, _number(gt=0, le=500)] | None = None
-    former_slit: Annotated[bool, Field(strict=True)] = Field(
+    former_thickness_mm: Annotated[Number, Field(gt=0, le=20)] | None = None
+    former_length_mm: Annotated[Number, Field(gt=0, le=500)] | None = None
+    former_slit: Flag = Field(
         default=False, description="A slit metal former carries no current round the coil."
     )
-    lead_resistance_ohm: Annotated[float, _number(ge=0, le=1e4)] | None = None
-    gap_flux_density_t: Annotated[float, _number(ge=0, le=3)] | None = Field(
+    lead_resistance_ohm: Annotated[Number, Field(ge=0, le=1e4)] | None = None
+    gap_flux_density_t: Annotated[Number, Field(ge=0, le=3)] | None = Field(
         default=None, description="May stand here or under conditions."
     )
     string: StringPart | None = Field(
