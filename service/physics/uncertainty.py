@@ -18,6 +18,7 @@ COVERAGE: Final = 0.95
 LEAST_TRIALS: Final = 20  # fewer leave no trial outside a 95 % interval
 
 _LEVELS: Final = 6  # halvings of the step in Richardson's extrapolation
+_EXACT_ENOUGH: Final = 1e-10
 _PROBES: Final = 5
 # First step: at most a tenth of the estimate, to stay inside the domain of roots and logarithms;
 # at least so much of the uncertainty and of the estimate that the difference survives rounding.
@@ -271,7 +272,7 @@ def _sensitivity(
             better = doubt < error
             best = np.where(better, row[order], best)
             error = np.where(better, doubt, error)
-        if level and (error <= 1e-12 * np.abs(best)).all():
+        if level and (error <= _EXACT_ENOUGH * np.abs(best)).all():
             break
         previous = row
         step /= 2.0
