@@ -6,7 +6,7 @@ Dispositions are the words of ISO 9000:2015, clause 3.12 (from memory).
 from dataclasses import dataclass
 from enum import StrEnum
 
-from service.errors import NotAllowed, WrongState
+from service.errors import ConfirmationNeeded, InvalidValue, NotAllowed, WrongState
 
 SCRAP_CAUSES = (
     "wire break",
@@ -149,3 +149,157 @@ def release_refusal(conformity: str | None) -> str | None:
     if conformity is None:
         return "It has no verdict yet."
     return f"Its last verdict is “{conformity}”."
+
+
+# A count this far from the recipe's is asked back: a coil given up early, or a slip of the pen.
+ASKED_BACK_SHARE = 0.2
+# Below half a turn two counts are the same turn, seen at another place on the spindle.
+SAME_TURN = 0.5
+_SLIPS = (10.0, 100.0, 1000.0)
+MOST_TURNS = 1_000_000
+
+
+def agree_turns(machine: float | None, given: float | None, reason: str | None) -> float:
+    """The turns that a coil was wound with: what a person says, else what the machine counted.
+
+    Raises InvalidValue where neither is known, or where they differ and no reason is given.
+    """
+    if given is None:
+        if machine is None or machine <= 0:
+            raise InvalidValue(
+                "No counter counted this coil.",
+                pointer="/agreed_turns",
+                mend="Send the turns that were wound.",
+            )
+        return machine
+    if not 0 < given < MOST_TURNS:
+        raise InvalidValue(
+            "A coil has some turns, and fewer than a million.",
+            pointer="/agreed_turns",
+            value=given,
+            mend="Send the turns that were wound.",
+        )
+    if machine is not None and abs(given - machine) >= SAME_TURN and not reason:
+        raise InvalidValue(
+            f"The machine counted {machine:g} turns, and {given:g} were entered.",
+            pointer="/reason",
+            value=given,
+            mend="Say why they differ, or agree with the machine.",
+            extra={"machine_turns": machine},
+        )
+    return given
+
+
+def ask_back_turns(turns: float, planned: int, confirmed: bool) -> None:
+    """Raise ConfirmationNeeded for a count far from the recipe's, unless it is confirmed."""
+    if confirmed or abs(turns - planned) <= ASKED_BACK_SHARE * planned:
+        return
+    raise ConfirmationNeeded(
+        f"{turns:g} turns are far from the recipe's {planned}.",
+        pointer="/agreed_turns",
+        value=turns,
+        mend=_slip(turns, planned) + "Send it again with “confirmed”: true if it is meant; "
+        "a coil that was given up is reported as lost instead.",
+        extra={"planned_turns": planned},
+    )
+
+
+def tells_of_wire(turns: float, planned: int) -> bool:
+    """Whether a count of a lost coil can be true, so that it tells how much wire was lost."""
+    return 1.0 <= turns <= (1.0 + ASKED_BACK_SHARE) * planned
+
+
+def _slip(turns: float, planned: int) -> str:
+    for factor in _SLIPS:
+        for meant in (turns * factor, turns / factor):
+            if abs(meant - planned) <= ASKED_BACK_SHARE * planned:
+                return f"Was {meant:g} meant? "
+    return ""
+
+
+def ask_back_count(asked: int, quantity: int, alive: int, confirmed: bool) -> None:
+    """Raise ConfirmationNeeded where more coils are planned than the order wants."""
+    wanted = max(0, quantity - alive)
+    if confirmed or asked <= wanted:
+        return
+    raise ConfirmationNeeded(
+        f"The order is for {quantity}, and {alive} are good or on their way.",
+        pointer="/count",
+        value=asked,
+        mend=f"Plan {wanted}, or send it again with “confirmed”: true for spare coils."
+        if wanted
+        else "Send it again with “confirmed”: true if spare coils are meant.",
+    )
+
+
+def check_disposition(
+    move: Move, *, cause: str | None, reason: str, regrades_to_itself: bool | None
+) -> None:
+    """Refuse a decision that does not say what a decision of its kind must say.
+
+    ``regrades_to_itself`` is None where no recipe is named. Raises InvalidValue.
+    """
+    if move not in DISPOSITIONS:
+        raise InvalidValue(
+            f"“{move}” is not a decision about a coil.",
+            pointer="/kind",
+            value=str(move),
+            mend=f"Choose one of: {', '.join(DISPOSITIONS)}.",
+        )
+    if not reason.strip():
+        raise InvalidValue("A decision needs a reason.", pointer="/reason", mend="Say why.")
+    if move is Move.SCRAP and cause is None:
+        raise InvalidValue(
+            "Scrap needs a cause.",
+            pointer="/cause",
+            mend=f"Choose one of: {', '.join(SCRAP_CAUSES)}.",
+        )
+    if cause is not None:
+        check_cause(cause)
+    if move is Move.REGRADE and regrades_to_itself is not False:
+        raise InvalidValue(
+            "A regrade names the recipe that the coil is moved to, another than its own.",
+            pointer="/regrade_recipe_id",
+            mend="Send the id of the recipe whose requirement the coil meets.",
+        )
+    if move is not Move.REGRADE and regrades_to_itself is not None:
+        raise InvalidValue(
+            "Only a regrade names another recipe.",
+            pointer="/regrade_recipe_id",
+            mend="Take it out, or decide to regrade.",
+        )
+
+
+def check_cause(cause: str) -> None:
+    """Raise InvalidValue for a cause that the month's report would not know."""
+    if cause not in SCRAP_CAUSES:
+        raise InvalidValue(
+            "This cause is not in the list.",
+            pointer="/cause",
+            value=cause,
+            mend=f"Choose one of: {', '.join(SCRAP_CAUSES)}.",
+        )
+
+
+@dataclass(frozen=True)
+class WireKind:
+    """Which wire: what stands on the spool's label, and in the recipe."""
+
+    conductor: str
+    size: str
+    build: str
+
+    def __str__(self) -> str:
+        return f"{self.size} {self.build} {self.conductor}"
+
+
+def spool_refusal(wanted: WireKind, loaded: WireKind, state: str) -> tuple[str, str] | None:
+    """Why a spool may not be wound from, and the mend; None where it may."""
+    if wanted != loaded:
+        return (
+            f"The recipe is wound with {wanted}, and this spool carries {loaded}.",
+            f"Load a spool of {wanted}.",
+        )
+    if state != "on the shelf":
+        return f"This spool is {state}.", f"Load another spool of {wanted}."
+    return None
