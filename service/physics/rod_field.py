@@ -18,7 +18,10 @@ from service.physics.rod_mesh import Floats, RodShape
 from service.physics.rods import RodModes, rod_modes
 from service.physics.section import WindingSection
 
+# Nodes of a quarter ring: for a winding a third of the rod's radius away or more, and nearer.
 _RING_NODES: Final = 6
+_RING_NODES_NEAR: Final = 12
+_NEAR: Final = 0.3
 _FACE_SAMPLES: Final = 6
 _HARMONICS: Final = 5
 
@@ -81,11 +84,14 @@ def coil_drive(section: WindingSection, place: RodPlace) -> Drive:
     face_radii = np.sqrt(squares)
 
     half = 0.5 * shape.length
-    ring_radius = np.concatenate((face_radii, np.ones_like(heights), face_radii))
+    # In the order of the path, so that the rings' mirror image is their reverse.
+    ring_radius = np.concatenate((face_radii, np.ones_like(heights), face_radii[::-1]))
     ring_height = np.concatenate(
         (np.full_like(face_radii, -half), heights, np.full_like(face_radii, half))
     )
-    angle, radial, axial = _on_rings(section, place, ring_radius, ring_height, azimuths)
+    points = (section, place, ring_radius, ring_height)
+    nodes = _RING_NODES if sharpness > _NEAR and not coaxial else _RING_NODES_NEAR
+    angle, radial, axial = _on_rings(*points, azimuths, nodes)
     side = slice(_FACE_SAMPLES, _FACE_SAMPLES + len(heights))
     mean_radial, mean_axial = radial.mean(axis=1), axial.mean(axis=1)
 
@@ -95,7 +101,7 @@ def coil_drive(section: WindingSection, place: RodPlace) -> Drive:
     radial_load = np.where(
         lower[:, 0],
         on_face @ mean_radial[:_FACE_SAMPLES],
-        on_face @ mean_radial[side.stop :],
+        on_face @ mean_radial[: side.stop - 1 : -1],
     )
     drive = modes.drive(radial_load, interpolate @ mean_axial[side])
     crosswise = np.zeros(0 if coaxial else _HARMONICS)
@@ -153,7 +159,12 @@ def lagrange(nodes: Floats, places: Floats) -> Floats:
 
 
 def _on_rings(
-    section: WindingSection, place: RodPlace, radius: Floats, height: Floats, count: int
+    section: WindingSection,
+    place: RodPlace,
+    radius: Floats,
+    height: Floats,
+    count: int,
+    nodes: int,
 ) -> tuple[Floats, Floats, Floats]:
     """Return angles, and radial and axial field (rings by angles) around the rod's axis.
 
@@ -184,7 +195,7 @@ def _on_rings(
     points[..., 0] = place.x + place.radius * rings[:, None] * cosine[keep]
     points[..., 1] = place.y + place.radius * rings[:, None] * sine[keep]
     points[..., 2] = place.offset + place.radius * level[:, None]
-    field = field_per_ampere_turn(section, points, _RING_NODES)
+    field = field_per_ampere_turn(section, points, nodes)
     radial: Floats = field[..., 0] * cosine[keep] + field[..., 1] * sine[keep]
     upside = np.where((place.offset == 0.0) & (height < 0.0), -1.0, 1.0)[:, None]
     return angle, upside * radial[fold][:, unfold], field[..., 2][fold][:, unfold]
