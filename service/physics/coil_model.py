@@ -344,7 +344,7 @@ class CoilModel:
         omega = 2.0 * math.pi * design.test_frequency
         impedance = warm + 1j * omega * series + turns * turns * self._shell
         inductance = impedance.imag / omega
-        capacitance = value("self-capacitance") / more
+        capacitance = abs(value("self-capacitance")) / more  # far draws of a sample may be below 0
         shown = impedance / (1.0 + 1j * omega * capacitance * impedance)
         flux = value("pole flux density")
         volts = 0.0
