@@ -1,0 +1,123 @@
+"""What is done about the workshop, its machines and its instruments."""
+
+import uuid
+from datetime import date, datetime
+from typing import Any, TypeVar
+
+import sqlalchemy as sa
+from sqlalchemy.orm import Session
+
+from service.errors import AlreadyThere, InvalidValue, NotFound
+from service.shop import rules
+from service.shop.models import THE_WORKSHOP, Instrument, Machine, Workshop
+from service.storage.records import Actor, record
+
+Thing = TypeVar("Thing", Machine, Instrument, Workshop)
+
+
+def ensure_workshop(session: Session, _now: datetime) -> Workshop:
+    """The one row of the workshop; made with defaults when the database is new."""
+    found = session.get(Workshop, THE_WORKSHOP)
+    if found is None:
+        found = Workshop(id=THE_WORKSHOP, name="Workshop", time_zone="UTC", rewind_rule="same unit")
+        session.add(found)
+        session.flush()
+    return found
+
+
+def workshop(session: Session) -> Workshop:
+    return session.scalars(sa.select(Workshop)).one()
+
+
+def today(session: Session, now: datetime) -> date:
+    """The shop's calendar day."""
+    return rules.day_in(workshop(session).time_zone, now)
+
+
+def edit_workshop(
+    session: Session, actor: Actor, found: Workshop, changes: dict[str, Any], now: datetime
+) -> None:
+    if "time_zone" in changes:
+        rules.zone(changes["time_zone"])
+    _change(session, actor, found, "workshop", changes, now)
+
+
+def _named(session: Session, kind: type[Machine] | type[Instrument], name: str) -> None:
+    if session.scalar(sa.select(kind.id).where(kind.name == name)):
+        raise AlreadyThere(
+            f"“{name}” is there already.",
+            pointer="/name",
+            value=name,
+            mend="Give it another name.",
+        )
+
+
+def add_machine(session: Session, actor: Actor, values: dict[str, Any], now: datetime) -> Machine:
+    _named(session, Machine, values["name"])
+    machine = Machine(**values, created_at=now)
+    session.add(machine)
+    session.flush()
+    record(session, actor, "add machine", "machine", machine.id, at=now, after=values)
+    return machine
+
+
+def machine_of(session: Session, machine_id: uuid.UUID, pointer: str | None = None) -> Machine:
+    machine = session.get(Machine, machine_id, with_for_update=True)
+    if machine is None:
+        raise NotFound("There is no such machine.", pointer=pointer, value=str(machine_id))
+    return machine
+
+
+def edit_machine(
+    session: Session, actor: Actor, machine: Machine, changes: dict[str, Any], now: datetime
+) -> None:
+    if changes.get("name", machine.name) != machine.name:
+        _named(session, Machine, changes["name"])
+    _change(session, actor, machine, "machine", changes, now)
+
+
+def add_instrument(
+    session: Session, actor: Actor, values: dict[str, Any], now: datetime
+) -> Instrument:
+    _named(session, Instrument, values["name"])
+    instrument = Instrument(**values, created_at=now)
+    session.add(instrument)
+    session.flush()
+    record(session, actor, "add instrument", "instrument", instrument.id, at=now, after=values)
+    return instrument
+
+
+def instrument_of(
+    session: Session, instrument_id: uuid.UUID, pointer: str | None = None
+) -> Instrument:
+    instrument = session.get(Instrument, instrument_id)
+    if instrument is None:
+        raise NotFound("There is no such instrument.", pointer=pointer, value=str(instrument_id))
+    return instrument
+
+
+def edit_instrument(
+    session: Session, actor: Actor, found: Instrument, changes: dict[str, Any], now: datetime
+) -> None:
+    if changes.get("name", found.name) != found.name:
+        _named(session, Instrument, changes["name"])
+    done = changes.get("calibrated_on", found.calibrated_on)
+    due = changes.get("calibration_due", found.calibration_due)
+    if due < done:
+        raise InvalidValue(
+            "The calibration is due before it was done.",
+            pointer="/calibration_due",
+            value=str(due),
+            mend="Correct one of the two dates.",
+        )
+    _change(session, actor, found, "instrument", changes, now)
+
+
+def _change(
+    session: Session, actor: Actor, thing: Thing, kind: str, changes: dict[str, Any], now: datetime
+) -> None:
+    before = {name: getattr(thing, name) for name in changes}
+    for name, value in changes.items():
+        setattr(thing, name, value)
+    session.flush()
+    record(session, actor, f"change {kind}", kind, thing.id, at=now, before=before, after=changes)

@@ -1,0 +1,92 @@
+"""Rules of stock: a spool's own resistance, and what is left on it."""
+
+import math
+from dataclasses import dataclass
+
+from service.errors import ConfirmationNeeded, InvalidValue
+from service.physics.wire import (
+    ALUMINIUM,
+    COPPER,
+    COPPER_CLAD_ALUMINIUM_10,
+    COPPER_CLAD_ALUMINIUM_15,
+    Conductor,
+    StandardWire,
+    resistance_at,
+    standard_wire,
+)
+
+CONDUCTORS: dict[str, Conductor] = {
+    "copper": COPPER,
+    "aluminium": ALUMINIUM,
+    "copper-clad aluminium 10": COPPER_CLAD_ALUMINIUM_10,
+    "copper-clad aluminium 15": COPPER_CLAD_ALUMINIUM_15,
+}
+# Enamel adds 5-15 % to the mass of fine bare copper (common practice, no source); the middle.
+ENAMEL_MASS = 1.10
+# A measured spool this far outside the standard's band is asked about once.
+_BAND_MARGIN = 0.20
+
+
+def wire_of(size: str, build: str, conductor: str) -> StandardWire:
+    """The standard wire. Raises InvalidValue that names the field and what is known."""
+    if conductor not in CONDUCTORS:
+        raise InvalidValue(
+            f"The conductor “{conductor}” is not known.",
+            pointer="/conductor",
+            value=conductor,
+            mend=f"Known are {', '.join(CONDUCTORS)}.",
+        )
+    try:
+        return standard_wire(size, build, conductor=CONDUCTORS[conductor])
+    except ValueError as error:
+        raise InvalidValue(
+            str(error),
+            pointer="/wire_size",
+            value=f"{size} {build}",
+            mend="Use a size as in “AWG 42” with single or heavy, or “0.063 mm” with grade 1 or 2.",
+        ) from error
+
+
+def mass_per_metre(wire: StandardWire, conductor: str) -> float:
+    """kg/m of enamelled wire, from the nominal conductor with a share for the enamel."""
+    area = math.pi / 4 * wire.conductor_diameter_nominal**2
+    return CONDUCTORS[conductor].density * area * ENAMEL_MASS
+
+
+@dataclass(frozen=True)
+class Remaining:
+    length_m: float
+    mass_kg: float
+
+
+def remaining(net_mass_kg: float, drawn_mass_kg: float, kg_per_metre: float) -> Remaining:
+    """What is left by calculation, never below nothing; weigh the spool when it matters."""
+    mass = max(0.0, net_mass_kg - drawn_mass_kg)
+    return Remaining(mass / kg_per_metre, mass)
+
+
+def own_resistance(
+    wire: StandardWire,
+    conductor: str,
+    *,
+    resistance_ohm: float,
+    length_m: float,
+    temperature_c: float,
+    confirmed: bool,
+) -> float:
+    """Ohm per metre at 20 °C of a measured length; asks back when far outside the standard."""
+    at_20 = resistance_at(
+        resistance_ohm, temperature_c, 20.0, CONDUCTORS[conductor].temperature_coefficient_20
+    )
+    per_metre = at_20 / length_m
+    low = wire.resistance_min * (1 - _BAND_MARGIN)
+    high = wire.resistance_max * (1 + _BAND_MARGIN)
+    if not low <= per_metre <= high and not confirmed:
+        raise ConfirmationNeeded(
+            f"That makes {per_metre:.4g} Ω/m at 20 °C; this wire has "
+            f"{wire.resistance_min:.4g} to {wire.resistance_max:.4g} Ω/m.",
+            pointer="/resistance_ohm",
+            value=resistance_ohm,
+            mend="Check unit, length and spool; send confirmed: true if you mean it.",
+        )
+    return per_metre
