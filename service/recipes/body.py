@@ -211,7 +211,9 @@ class StageLimitPart(Body):
     stage: Literal["raw", "potted", "final"]
     characteristic: Literal["resistance", "inductance", "self_resonance", "quality_factor"]
     lower: Annotated[Number, Field(ge=-1e9, le=1e9)] | None = None
-    upper: Annotated[Number, Field(ge=-1e9, le=1e9)] | None = None
+    upper: Annotated[Number, Field(ge=-1e9, le=1e9)] | None = Field(
+        default=None, validate_default=True
+    )
     kind: Literal["relative", "absolute"] = Field(
         description="relative: in % from the nominal value; absolute: in ohm, H, Hz or 1."
     )
