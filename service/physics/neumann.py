@@ -16,7 +16,7 @@ number of Gauss points serves every shape.
 
 from collections.abc import Sequence
 from functools import lru_cache
-from typing import Final
+from typing import Final, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -59,39 +59,67 @@ def height_lags(height_a: float, height_b: float, distance: float) -> Lags:
     return tuple((lag, weight) for lag, weight in weights.items() if lag > 0.0 and weight != 0.0)
 
 
-def turn_integral(
-    straight_x: float, straight_y: float, radius_a: Array, radius_b: Array, lags: Lags
-) -> Array:
+def profile_lags(profile_a: Sequence[float], profile_b: Sequence[float], step: float) -> Lags:
+    """Return the separations, with weights, for uneven densities over one and the same height.
+
+    The profiles are shares of turns in equal slices of height `step` (m). Averages as
+    `height_lags`, weighted by both shares.
+    """
+    overlap = np.correlate(profile_a, profile_b, mode="full")
+    bends = np.diff(overlap, 2, prepend=[0.0, 0.0], append=[0.0, 0.0])
+    middle = len(bends) // 2
+    folded = bends[middle + 1 :] + bends[:middle][::-1]
+    # Even slices cancel but for rounding: leave out what carries nothing.
+    heavy = np.abs(folded) > 1e-13 * np.abs(folded).max()
+    steps = np.arange(1, middle + 1)
+    return tuple(
+        (float(k) * step, float(weight) / step**2)
+        for k, weight in zip(steps[heavy], folded[heavy], strict=True)
+    )
+
+
+class TurnPairs(NamedTuple):
+    """Corner radii of pairs of turns, m, above zero.
+
+    `apart` is a - b, not zero but as small as may be: kept because the difference would round.
+    """
+
+    a: Array
+    b: Array
+    apart: Array
+
+
+def turn_integral(straight_x: float, straight_y: float, pairs: TurnPairs, lags: Lags) -> Array:
     """Return the height-averaged Neumann integral of pairs of turns.
 
     Args:
-        straight_x, straight_y: straight sides of both turns, m.
-        radius_a, radius_b: corner radii of the turns of each pair, m; never equal.
-        lags: from `height_lags`.
+        straight_x, straight_y: straight sides of all turns, m.
+        pairs: corner radii.
+        lags: from `height_lags` or `profile_lags`.
 
     Returns:
         Integral of (ds . ds') / distance in m, one for each pair; times mu0/(4 pi) it is their
         mutual inductance.
     """
     if straight_x == 0.0 and straight_y == 0.0:
-        return _circles(radius_a, radius_b, lags)
+        return _circles(pairs, lags)
     # A coil with one pair of straights has half circles at its ends, whose points see each other
     # along one arc; let those straights lie along x.
     along, across = max(straight_x, straight_y), min(straight_x, straight_y)
-    total = _same_corner(radius_a, radius_b, np.pi if across == 0.0 else _QUARTER, lags)
+    total = _same_corner(pairs, np.pi if across == 0.0 else _QUARTER, lags)
     for side, other in ((along, across), (across, along)):
         if side > 0.0:
-            total += _straights(side, other, radius_a, radius_b, lags)
-            total += _straights_with_corners(side, other, radius_a, radius_b, lags)
-            total += _corners_across_straight(side, radius_a, radius_b, lags)
-    total += _opposite_corners(along, across, radius_a, radius_b, lags)
+            total += _straights(side, other, pairs, lags)
+            total += _straights_with_corners(side, other, pairs, lags)
+            total += _corners_across_straight(side, pairs, lags)
+    total += _opposite_corners(along, across, pairs, lags)
     return total
 
 
-def _angles_from_junction(radius_a: Array, radius_b: Array, end: float) -> tuple[Array, Array]:
+def _angles_from_junction(pairs: TurnPairs, end: float) -> tuple[Array, Array]:
     """Angles from 0 to `end` with weights, crowded at 0 on the scale of the turns' distance."""
     nodes, weights = gauss_points(_POINTS_ALONG_CORNER)
-    scale = (np.abs(radius_a - radius_b) / np.sqrt(radius_a * radius_b))[:, None]
+    scale = (np.abs(pairs.apart) / np.sqrt(pairs.a * pairs.b))[:, None]
     return _spread(scale, end, nodes, weights)
 
 
@@ -101,8 +129,9 @@ def _spread(scale: Array, end: float, nodes: Array, weights: Array) -> tuple[Arr
     return scale * np.sinh(t), weights * reach * scale * np.cosh(t)
 
 
-def _arc_distance(a: Array, b: Array, angle: Array) -> Array:
-    return _length(a - b, 2.0 * np.sqrt(a * b) * np.sin(angle / 2.0))
+def _arc_distance(pairs: TurnPairs, angle: Array) -> Array:
+    chord = 2.0 * np.sqrt(pairs.a * pairs.b)[:, None] * np.sin(angle / 2.0)
+    return _length(pairs.apart[:, None], chord)
 
 
 def _length(x: Array, y: Array | float) -> Array:
@@ -116,44 +145,38 @@ def _sum(values: Array) -> Array:
     return total
 
 
-def _circles(radius_a: Array, radius_b: Array, lags: Lags) -> Array:
-    a, b = radius_a[:, None], radius_b[:, None]
-    angle, weight = _angles_from_junction(radius_a, radius_b, np.pi)
-    kernel = _point(_arc_distance(a, b, angle), lags)
-    return 4.0 * np.pi * radius_a * radius_b * _sum(weight * np.cos(angle) * kernel)
+def _circles(pairs: TurnPairs, lags: Lags) -> Array:
+    angle, weight = _angles_from_junction(pairs, np.pi)
+    kernel = _point(_arc_distance(pairs, angle), lags)
+    return 4.0 * np.pi * pairs.a * pairs.b * _sum(weight * np.cos(angle) * kernel)
 
 
-def _same_corner(radius_a: Array, radius_b: Array, span: float, lags: Lags) -> Array:
+def _same_corner(pairs: TurnPairs, span: float, lags: Lags) -> Array:
     """Arcs of both turns around the same centre, each over `span`, for the whole coil."""
-    a, b = radius_a[:, None], radius_b[:, None]
-    angle, weight = _angles_from_junction(radius_a, radius_b, span)
-    kernel = _point(_arc_distance(a, b, angle), lags)
+    angle, weight = _angles_from_junction(pairs, span)
+    kernel = _point(_arc_distance(pairs, angle), lags)
     # So many pairs of points on the two arcs differ by that angle, in either direction.
-    pairs = 2.0 * (span - angle)
+    times = 2.0 * (span - angle)
     arcs = 2.0 * np.pi / span
-    return arcs * radius_a * radius_b * _sum(weight * pairs * np.cos(angle) * kernel)
+    return arcs * pairs.a * pairs.b * _sum(weight * times * np.cos(angle) * kernel)
 
 
-def _straights(side: float, other: float, radius_a: Array, radius_b: Array, lags: Lags) -> Array:
+def _straights(side: float, other: float, pairs: TurnPairs, lags: Lags) -> Array:
     """Straight sides of one direction: each with its neighbour and against the opposite one."""
-    near, far = np.abs(radius_a - radius_b), other + radius_a + radius_b
+    near, far = np.abs(pairs.apart), other + pairs.a + pairs.b
     return 4.0 * (_line_with_line(side, near, lags) - _line_with_line(side, far, lags))
 
 
-def _straights_with_corners(
-    side: float, other: float, radius_a: Array, radius_b: Array, lags: Lags
-) -> Array:
+def _straights_with_corners(side: float, other: float, pairs: TurnPairs, lags: Lags) -> Array:
     """Straight sides of one direction with all corners, each turn's with the other's."""
-    angle, weight = _angles_from_junction(radius_a, radius_b, _QUARTER)
-    sine, cosine = np.sin(angle), np.cos(angle)
-    total = np.zeros_like(radius_a)
-    for corner, straight in (
-        (radius_a[:, None], radius_b[:, None]),
-        (radius_b[:, None], radius_a[:, None]),
-    ):
+    angle, weight = _angles_from_junction(pairs, _QUARTER)
+    sine, cosine, sagitta = np.sin(angle), np.cos(angle), 2.0 * np.sin(angle / 2.0) ** 2
+    total = np.zeros_like(pairs.a)
+    for corners, beyond in ((pairs.a, -pairs.apart), (pairs.b, pairs.apart)):
+        corner = corners[:, None]
         start = corner * sine
-        near = np.maximum(np.abs(straight - corner * cosine), _TINY)
-        far = other + corner * cosine + straight
+        near = np.maximum(np.abs(beyond[:, None] + corner * sagitta), _TINY)
+        far = other + corner * cosine + corner + beyond[:, None]
         seen = (
             _line(start + side, near, lags)
             - _line(start, near, lags)
@@ -164,34 +187,32 @@ def _straights_with_corners(
     return total
 
 
-def _corners_across_straight(side: float, radius_a: Array, radius_b: Array, lags: Lags) -> Array:
+def _corners_across_straight(side: float, pairs: TurnPairs, lags: Lags) -> Array:
     """Corners at both ends of a straight side, for the whole coil."""
     nodes, weights = gauss_points(_POINTS_BETWEEN_CORNERS)
-    gap = _length(radius_a - radius_b, side) / np.sqrt(radius_a * radius_b)
+    gap = _length(pairs.apart, side) / np.sqrt(pairs.a * pairs.b)
     angle, weight = _spread(np.maximum(gap, _NEAREST_ANGLE)[:, None], _QUARTER, nodes, weights)
     from_a, from_b = angle[:, :, None], angle[:, None, :]
-    a, b = radius_a[:, None, None], radius_b[:, None, None]
+    a, b = pairs.a[:, None, None], pairs.b[:, None, None]
     distance = _length(
         side + a * np.sin(from_a) + b * np.sin(from_b), a * np.cos(from_a) - b * np.cos(from_b)
     )
     kernel = np.cos(from_a + from_b) * _point(distance, lags)
-    return 4.0 * radius_a * radius_b * _sum(weight[:, :, None] * weight[:, None, :] * kernel)
+    return 4.0 * pairs.a * pairs.b * _sum(weight[:, :, None] * weight[:, None, :] * kernel)
 
 
-def _opposite_corners(
-    side: float, other: float, radius_a: Array, radius_b: Array, lags: Lags
-) -> Array:
+def _opposite_corners(side: float, other: float, pairs: TurnPairs, lags: Lags) -> Array:
     """Corners opposite each other across the middle, for the whole coil."""
     nodes, weights = gauss_points(_POINTS_BETWEEN_CORNERS)
     angle, weight = _QUARTER * nodes, _QUARTER * weights
     from_a, from_b = angle[None, :, None], angle[None, None, :]
-    a, b = radius_a[:, None, None], radius_b[:, None, None]
+    a, b = pairs.a[:, None, None], pairs.b[:, None, None]
     distance = _length(
         side + a * np.cos(from_a) + b * np.cos(from_b),
         other + a * np.sin(from_a) + b * np.sin(from_b),
     )
     kernel = -np.cos(from_a - from_b) * _point(distance, lags)
-    return 4.0 * radius_a * radius_b * _sum(np.multiply.outer(weight, weight) * kernel)
+    return 4.0 * pairs.a * pairs.b * _sum(np.multiply.outer(weight, weight) * kernel)
 
 
 # Antiderivatives of 1/R with R^2 = x^2 + q^2 + z^2, less their value at z = 0. With `rise` = R

@@ -13,6 +13,7 @@ from service.physics.inductance import (
     mutual_inductance_of_circles,
     mutual_inductance_of_coils,
     solenoid_inductance,
+    uneven_coil_inductance,
 )
 from tests.physics.filaments import (
     MU_0,
@@ -176,7 +177,7 @@ def test_a_coil_in_two_parts_one_around_the_other_is_the_same_coil(
     assert whole == pytest.approx(coil_inductance(section, 1), rel=1e-7)
 
 
-@settings(max_examples=20, deadline=None)
+@settings(max_examples=8, deadline=None)
 @given(sections(), sections(), st.floats(0.0, 0.2))
 def test_mutual_inductance_is_the_same_both_ways(
     one: WindingSection, other: WindingSection, distance: float
@@ -225,6 +226,62 @@ def test_filaments_in_space_give_the_same_to_a_millionth(
 ) -> None:
     expected = inductance_by_filaments(section, *points)
     assert coil_inductance(section, 1) == pytest.approx(expected, rel=1e-6)
+
+
+@pytest.mark.parametrize("section", SHAPES)
+@pytest.mark.parametrize("shares", [[[5.0]], [[1.0] * 6], [[2.0] * 3] * 2])
+def test_even_shares_are_the_even_coil(section: WindingSection, shares: list[list[float]]) -> None:
+    # Rings differ in length, not in turns: even shares are the even coil in both directions.
+    even = coil_inductance(section, 100)
+    assert uneven_coil_inductance(section, 100, shares) == pytest.approx(even, rel=1e-7)
+
+
+def test_an_uneven_coil_is_the_sum_of_its_cells() -> None:
+    shares = [[1.0, 3.0, 0.0], [2.0, 5.0, 4.0]]
+    step, rise = RACETRACK.build / 2, RACETRACK.height / 3
+    cells = [
+        (
+            WindingSection(0.052, 0.0, 0.003 + i * step, 0.003 + (i + 1) * step, rise),
+            share,
+            k * rise,
+        )
+        for i, row in enumerate(shares)
+        for k, share in enumerate(row)
+    ]
+    total = sum(
+        mutual_inductance_of_coils(a, share_a, b, share_b, abs(z_a - z_b))
+        for a, share_a, z_a in cells
+        for b, share_b, z_b in cells
+    )
+    assert uneven_coil_inductance(RACETRACK, 15.0, shares) == pytest.approx(total, rel=1e-9)
+
+
+def test_turns_heaped_in_the_middle_couple_more_than_turns_heaped_at_the_flanges() -> None:
+    even = coil_inductance(RACETRACK, 8000)
+    middle = uneven_coil_inductance(RACETRACK, 8000, [[1, 2, 3, 3, 2, 1]])
+    flanges = uneven_coil_inductance(RACETRACK, 8000, [[3, 2, 1, 1, 2, 3]])
+    assert flanges < even < middle
+
+
+def test_a_profile_may_be_turned_over() -> None:
+    shares = [[1.0, 2.0, 5.0, 0.5]]
+    turned = [shares[0][::-1]]
+    there = uneven_coil_inductance(RACETRACK, 1, shares)
+    assert uneven_coil_inductance(RACETRACK, 1, turned) == pytest.approx(there, rel=1e-13)
+
+
+def test_an_empty_ring_leaves_the_other_one() -> None:
+    outer = WindingSection(0.052, 0.0, 0.0055, 0.008, 0.011)
+    found = uneven_coil_inductance(RACETRACK, 10, [[0.0, 0.0], [1.0, 1.0]])
+    assert found == pytest.approx(coil_inductance(outer, 10), rel=1e-9)
+
+
+@pytest.mark.parametrize(
+    "shares", [[], [[]], [[1.0], [1.0, 2.0]], [[0.0, 0.0]], [[1.0, -1.0]], [[math.nan]]]
+)
+def test_impossible_shares_are_refused(shares: list[list[float]]) -> None:
+    with pytest.raises(ValueError, match="shares"):
+        uneven_coil_inductance(RACETRACK, 1, shares)
 
 
 @pytest.mark.parametrize("turns", [-1.0, math.nan, math.inf, True, "8000"])

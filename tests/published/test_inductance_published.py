@@ -127,9 +127,21 @@ def test_lyles_geometric_mean_distances(ratio: float, share: float) -> None:
         (200, 100, 0.1, 8017.786),
         (20, 10, 0.05, 608.935),
         (10, 10, 0.05, 382.306),
+        (7, 1, 0.003175, 186.7312),
     ],
 )
 def test_rosas_rectangles(a: float, b: float, r: float, nanohenry: float) -> None:
     size = math.exp(-0.25) * r / 0.447049
     section = WindingSection((a - size) / 100, (b - size) / 100, 0.0, size / 100, size / 100)
     assert coil_inductance(section, 1) * 1e9 == pytest.approx(nanohenry, rel=3e-4)
+
+
+# Rayleigh and Niven's ring of round wire, formula from memory: radius a and wire radius r in cm,
+# nH. The section here is a square of the same geometric mean distance.
+@pytest.mark.parametrize(
+    ("a", "r", "nanohenry"), [(25, 0.05, 2055.875), (25, 0.5, 1332.595), (10, 0.05, 707.208)]
+)
+def test_the_ring_of_rayleigh_and_niven(a: float, r: float, nanohenry: float) -> None:
+    size = math.exp(-0.25) * r / 0.447049
+    found = coil_inductance(round_coil(a / 100, size / 100, size / 100), 1)
+    assert found * 1e9 == pytest.approx(nanohenry, rel=2e-5)

@@ -217,6 +217,13 @@ def test_a_warm_coil(temperature: float, ohm: float) -> None:
     assert resistance_at(7000.0, 20.0, temperature) == pytest.approx(ohm, rel=1e-5)
 
 
+# A textbook's question on a field coil: 250 ohm at 15 C with alpha 0.00428 referred to 0 C gains
+# 30.16 ohm up to 45 C; the answer is arithmetic.
+def test_a_coefficient_referred_to_zero_degrees() -> None:
+    alpha_20 = 0.00428 / (1.0 + 0.00428 * 20.0)
+    assert resistance_at(250.0, 15.0, 45.0, alpha_20) == pytest.approx(280.16, abs=0.01)
+
+
 # NEMA nominal diameter 0.0635 mm with 1/58 ohm mm2/m (IEC 60028): 5.444 ohm/m.
 def test_bare_42_gauge() -> None:
     assert resistance_per_metre(0.0635e-3) == pytest.approx(5.444, rel=1e-4)
