@@ -160,24 +160,28 @@ class CoilModel:
         self.poles: tuple[Pole, ...] = tuple(
             replace(pole, susceptibility=share * pole.susceptibility) for pole in self.design.poles
         )
-        self._added, self._added_by_build, self._added_by_material = 0j, 0j, 0j
-        if not self.poles:
-            return
-        self._added = self._added_by(self.section, 1.0)
+        self._added = self._added_by(self.section) if self.poles else 0j
+        self._added_powers: dict[str, complex] = {}
         if self._added == 0.0:
             return
         thicker = _resized(self.section, {"build": self.section.build}, "build")
-        self._added_by_build = cmath.log(self._added_by(thicker, 1.0) / self._added) / math.log1p(
-            _STEP
-        )
-        self._added_by_material = cmath.log(
-            self._added_by(self.section, 1.0 + _STEP) / self._added
-        ) / math.log1p(_STEP)
+        moved = {
+            "build": self._added_by(thicker),
+            "pole susceptibility": self._added_by(self.section, susceptibility=1.0 + _STEP),
+            "pole conductivity": self._added_by(self.section, conductivity=1.0 + _STEP),
+        }
+        self._added_powers = {
+            name: cmath.log(added / self._added) / math.log1p(_STEP)
+            for name, added in moved.items()
+        }
 
-    def _added_by(self, section: WindingSection, share: float) -> complex:
+    def _added_by(
+        self, section: WindingSection, susceptibility: float = 1.0, conductivity: float = 1.0
+    ) -> complex:
+        """Added inductance of one turn with the rods' material scaled by the factors."""
         return pole_response(section, self.poles).added_inductance(
-            [share * pole.susceptibility for pole in self.poles],
-            [pole.conductivity for pole in self.poles],
+            [susceptibility * pole.susceptibility for pole in self.poles],
+            [conductivity * pole.conductivity for pole in self.poles],
             self.design.test_frequency,
         )
 
@@ -257,6 +261,7 @@ class CoilModel:
             rows += [
                 ("pole inductance model", "1", Estimate(1.0, _POLE_MODEL_UNCERTAINTY), "model"),
                 ("pole susceptibility", "1", self._susceptibility(), "magnets"),
+                ("pole conductivity", "S/m", self._conductivity(), "magnets"),
                 ("pole flux density", "T", design.pole_flux_density, "magnets"),
             ]
         if self.output is not None and self.output.fundamental > 0.0:
@@ -275,6 +280,10 @@ class CoilModel:
         if learned is not None and learned.value > 0.0:
             return Estimate(value, value * learned.standard_uncertainty / learned.value)
         return Estimate(value, value * self.design.susceptibility_uncertainty)
+
+    def _conductivity(self) -> Estimate:
+        value = self.poles[0].conductivity
+        return Estimate(value, value * self.design.conductivity_uncertainty)
 
     def outputs_at(self, x: FloatArray) -> FloatArray:
         """Return the outputs, in the order of OUTPUTS and in SI units, for values of the inputs."""
@@ -336,11 +345,12 @@ class CoilModel:
         air = turns * turns * self._air * shape * value("air inductance model")
         series = complex(air)
         if self.poles:
-            series += (
-                turns * turns * self._added * value("pole inductance model")
-                * growth**self._added_by_build
-                * ratio("pole susceptibility") ** self._added_by_material
-            )  # fmt: skip
+            changes |= {n: ratio(n) for n in ("pole susceptibility", "pole conductivity")}
+            material = math.prod(
+                (changes[name] ** power for name, power in self._added_powers.items()),
+                start=1.0 + 0.0j,
+            )
+            series += turns * turns * self._added * material * value("pole inductance model")
         omega = 2.0 * math.pi * design.test_frequency
         impedance = warm + 1j * omega * series + turns * turns * self._shell
         inductance = impedance.imag / omega

@@ -52,7 +52,7 @@ class Design:
         spool: the spool's own resistance at 20 °C, ohm/m; None if not measured.
         turns_uncertainty: standard uncertainty of the count; 0 for a counter that is trusted.
         poles: magnetic rods inside, or one core.
-        susceptibility_uncertainty: relative, of the rods' material.
+        susceptibility_uncertainty, conductivity_uncertainty: relative, of the rods' material.
         pole_flux_density: on the axis at the poles' tops, T.
         shell: a closed conducting former, which is a shorted turn.
         temperature: of the coil, °C; the spread of the magnets' temperature is not in it.
@@ -74,6 +74,7 @@ class Design:
     turns_uncertainty: float = 0.0
     poles: tuple[Pole, ...] = ()
     susceptibility_uncertainty: float = 0.0
+    conductivity_uncertainty: float = 0.0
     pole_flux_density: Estimate = NOTHING
     shell: Shell | None = None
     temperature: float = 20.0
@@ -91,6 +92,7 @@ class Design:
             raise ValueError(f"layers must be None for a scattered winding, got {self.layers!r}")
         non_negative("turns_uncertainty", self.turns_uncertainty)
         non_negative("susceptibility_uncertainty", self.susceptibility_uncertainty)
+        non_negative("conductivity_uncertainty", self.conductivity_uncertainty)
         celsius("temperature", self.temperature)
         non_negative("temperature_uncertainty", self.temperature_uncertainty)
         positive("test_frequency", self.test_frequency)

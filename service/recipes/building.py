@@ -6,8 +6,8 @@ from service.errors import InvalidValue
 from service.physics.design import NOTHING, Design, Learned, Shell
 from service.physics.former import Former
 from service.physics.guide import Scatter
-from service.physics.magnet import MagnetGrade, grade
 from service.physics.output import VibratingString
+from service.physics.pole_materials import PoleMaterial, pole_material
 from service.physics.poles import Pole
 from service.physics.uncertainty import Estimate
 from service.physics.voice_coil import former_material
@@ -70,7 +70,7 @@ def to_design(body: RecipeBody, learned: Learned | None = None) -> Design:
     leads = body.lead_resistance_ohm or 0.0
     gap = _gap_flux_density(body)
     height = conditions.gap_height_mm
-    poles = _poles(body)
+    material = _pole_material(body)
     return Design(
         former=former,
         wire=wire,
@@ -78,7 +78,9 @@ def to_design(body: RecipeBody, learned: Learned | None = None) -> Design:
         scatter=_scatter(body),
         layers=body.layers,
         spool=_spool(body.wire),
-        poles=poles,
+        poles=() if material is None else _poles(body, material),
+        susceptibility_uncertainty=material.susceptibility_uncertainty if material else 0.0,
+        conductivity_uncertainty=material.conductivity_uncertainty if material else 0.0,
         shell=_shell(body),
         temperature=conditions.temperature_c,
         test_frequency=conditions.test_frequency_hz,
@@ -141,22 +143,35 @@ def _scatter(body: RecipeBody) -> Scatter | None:
     )
 
 
-def _poles(body: RecipeBody) -> tuple[Pole, ...]:
+def _pole_material(body: RecipeBody) -> PoleMaterial | None:
+    """Of the rods or the core; None for a coil in air."""
     if body.poles is not None and body.core is not None:
         raise InvalidValue(
             "A coil has poles or a core, not both.",
             pointer="/core",
             mend="Set poles or core to null.",
         )
+    for name, part in (("poles", body.poles), ("core", body.core)):
+        if part is not None:
+            try:
+                return pole_material(part.material)
+            except ValueError as error:
+                raise InvalidValue(
+                    f"There is no pole material of this name: {error}.",
+                    pointer=f"/{name}/material",
+                    value=part.material,
+                    mend="Choose one of the materials named.",
+                ) from error
+    return None
+
+
+def _poles(body: RecipeBody, material: PoleMaterial) -> tuple[Pole, ...]:
     if body.core is not None:
-        return (_core(body),)
-    return _row(body)
+        return (_core(body, body.core, material),)
+    return () if body.poles is None else _row(body, body.poles, material)
 
 
-def _row(body: RecipeBody) -> tuple[Pole, ...]:
-    part = body.poles
-    if part is None:
-        return ()
+def _row(body: RecipeBody, part: PolesPart, material: PoleMaterial) -> tuple[Pole, ...]:
     if part.count > 1 and part.pitch_mm < part.diameter_mm:
         raise InvalidValue(
             f"Rods of {part.diameter_mm:g} mm do not stand {part.pitch_mm:g} mm apart.",
@@ -191,16 +206,12 @@ def _row(body: RecipeBody) -> tuple[Pole, ...]:
         (index - (part.count - 1) / 2.0) * part.pitch_mm * MILLI for index in range(part.count)
     ]
     lengthwise = former.straight_x_mm >= former.straight_y_mm
-    material = _material(part.material, "/poles/material")
     return tuple(
         _rod(part, material, (place, 0.0) if lengthwise else (0.0, place)) for place in places
     )
 
 
-def _core(body: RecipeBody) -> Pole:
-    part = body.core
-    if part is None:
-        raise ValueError("core must not be None")
+def _core(body: RecipeBody, part: CorePart, material: PoleMaterial) -> Pole:
     former = body.former
     if former.straight_x_mm or former.straight_y_mm:
         raise InvalidValue(
@@ -217,31 +228,19 @@ def _core(body: RecipeBody) -> Pole:
             value=part.diameter_mm,
             mend=f"Give a diameter of at most {room:.4g} mm.",
         )
-    return _rod(part, _material(part.material, "/core/material"), (0.0, 0.0))
+    return _rod(part, material, (0.0, 0.0))
 
 
-def _rod(part: PolesPart | CorePart, material: MagnetGrade, place: tuple[float, float]) -> Pole:
+def _rod(part: PolesPart | CorePart, material: PoleMaterial, place: tuple[float, float]) -> Pole:
     return Pole(
         place[0],
         place[1],
         part.diameter_mm * MILLI,
         part.length_mm * MILLI,
         part.offset_mm * MILLI,
-        material.recoil_permeability - 1.0,
+        material.susceptibility,
         material.conductivity,
     )
-
-
-def _material(name: str, pointer: str) -> MagnetGrade:
-    try:
-        return grade(name)
-    except ValueError as error:
-        raise InvalidValue(
-            f"There is no pole material of this name: {error}.",
-            pointer=pointer,
-            value=name,
-            mend="Choose one of the materials named.",
-        ) from error
 
 
 def _thickness(body: RecipeBody) -> float:
