@@ -1,11 +1,14 @@
 """How rods magnetise each other: the mean potential of one rod's charge on another's surface."""
 
+import itertools
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 from typing import Final
 
 import numpy as np
+import numpy.typing as npt
 
 from service.physics.gauss import gauss_legendre
 from service.physics.rod_charges import charge_at
@@ -98,3 +101,103 @@ def mean_potential(
     inverse = 1.0 / np.sqrt(over_x * over_x + over_y * over_y + over_z * over_z)
     potential: Floats = inverse.mean(axis=(1, 3)) / (4.0 * math.pi)
     return potential
+
+
+class RodGroup:
+    """Rods in their places, and the potentials that their charges cause on each other.
+
+    Attributes:
+        rings: of each rod; empty for a single rod, which has nothing to couple to.
+        spans: where each rod's rings stand in the vectors of all rings.
+        potential: potential on each ring for unit charge on each, 1/m; 0 within a rod.
+    """
+
+    def __init__(self, places: Sequence[RodPlace], shapes: Sequence[RodShape]) -> None:
+        self.places = tuple(places)
+        several = len(self.places) > 1
+        self.rings = [
+            charge_rings(shape, *ring_counts(self.places, i))
+            for i, shape in enumerate(shapes if several else ())
+        ]
+        starts = np.concatenate(([0], np.cumsum([len(r.radius) for r in self.rings], dtype=int)))
+        self.spans = [slice(int(a), int(b)) for a, b in itertools.pairwise(starts)]
+        self.potential: Floats = np.zeros((int(starts[-1]), int(starts[-1])))
+        blocks: dict[tuple[object, ...], Floats] = {}
+        for i, j in itertools.combinations(range(len(self.rings)), 2):
+            a, b = self.places[i], self.places[j]
+            # Pairs that are equal but for rounding share their potentials.
+            apart = float(f"{math.hypot(a.x - b.x, a.y - b.y):.10g}")
+            rise = b.offset - a.offset
+            rings_a, rings_b = self.rings[i], self.rings[j]
+            key = (apart, rise, id(rings_a), id(rings_b), a.radius, b.radius)
+            if key not in blocks:
+                blocks[key] = mean_potential(
+                    apart,
+                    rise,
+                    (rings_a.radius * a.radius, rings_a.height * a.radius),
+                    (rings_b.radius * b.radius, rings_b.height * b.radius),
+                )
+            self.potential[self.spans[i], self.spans[j]] = blocks[key]
+            self.potential[self.spans[j], self.spans[i]] = blocks[key].T
+
+    def solve(
+        self, drives: Sequence[Floats], responses: Sequence[npt.NDArray[np.inexact]]
+    ) -> list[npt.NDArray[np.inexact]]:
+        """Return the amplitudes of each rod's modes, coupling included.
+
+        Args:
+            drives: of each rod's modes by the applied field.
+            responses: amplitudes for unit drives: a diagonal, or a matrix.
+        """
+        free = [
+            _applied(response, drive) for response, drive in zip(responses, drives, strict=True)
+        ]
+        if not self.rings:
+            return free
+        kind = np.result_type(*free)
+        size = len(self.potential)
+        receives = np.zeros((size, size), dtype=kind)
+        charge = np.zeros(size, dtype=kind)
+        shared: dict[tuple[int, int], npt.NDArray[np.inexact]] = {}
+        for rings, span, place, response, amplitude in zip(
+            self.rings, self.spans, self.places, responses, free, strict=True
+        ):
+            key = (id(rings), id(response))
+            if key not in shared:
+                shared[key] = rings.per_mode @ _applied(response, rings.per_mode.T)
+            charge[span] = place.radius**2 * (rings.per_mode @ amplitude)
+            receives[span] = place.radius * (shared[key] @ self.potential[span])
+        charge = np.linalg.solve(np.eye(size) + receives, charge)
+        received = self.received(charge)
+        return [
+            amplitude + _applied(response, drive)
+            for amplitude, response, drive in zip(free, responses, received, strict=True)
+        ]
+
+    def charge(self, amplitudes: Sequence[npt.NDArray[np.inexact]]) -> npt.NDArray[np.inexact]:
+        """Return the charge on all rings for the amplitudes of each rod's modes."""
+        return np.concatenate(
+            [
+                place.radius**2 * (rings.per_mode @ amplitude)
+                for place, rings, amplitude in zip(self.places, self.rings, amplitudes, strict=True)
+            ]
+        )
+
+    def received(self, charge: npt.NDArray[np.inexact]) -> list[npt.NDArray[np.inexact]]:
+        """Return what the charge on all rings drives in each rod's modes."""
+        potential = self.potential @ charge
+        return [
+            -(rings.per_mode.T @ potential[span]) / place.radius
+            for place, rings, span in zip(self.places, self.rings, self.spans, strict=True)
+        ]
+
+
+def _applied(
+    response: npt.NDArray[np.inexact], drive: npt.NDArray[np.inexact]
+) -> npt.NDArray[np.inexact]:
+    """Apply a response, given as a diagonal or a matrix, to a drive or to columns of drives."""
+    if response.ndim == 2:
+        applied: npt.NDArray[np.inexact] = response @ drive
+        return applied
+    scaled: npt.NDArray[np.inexact] = (response * drive.T).T
+    return scaled

@@ -42,11 +42,13 @@ class RodShape:
         features: heights above the rod's middle, in radii and rising, at which the applied field
             changes quickly (the flanges of the coil).
         sharpness: distance over which it changes there, in radii.
+        coarseness: 1 for the inductance; 2 makes elements twice as large, and more at the rim.
     """
 
     length: float
     features: tuple[float, ...] = ()
     sharpness: float = 1.0
+    coarseness: float = 1.0
 
 
 class Line:
@@ -109,7 +111,7 @@ class RodMesh:
     def __init__(self, shape: RodShape) -> None:
         self.half = 0.5 * shape.length
         self.axial = Line(_axial_edges(shape))
-        self.radial = Line(_radial_edges(shape.length) ** 2)
+        self.radial = Line(_radial_edges(shape) ** 2)
         faces, side = self.radial.elements, self.axial.elements
         self.on_side = np.zeros(2 * faces + side, dtype=np.bool_)
         self.on_side[faces : faces + side] = True
@@ -164,7 +166,9 @@ def _samples(low: float, high: float) -> Floats:
 
 def _axial_edges(shape: RodShape) -> Floats:
     half = 0.5 * shape.length
-    rim = min(_AT_RIM, 0.05 * shape.length)
+    rim = _rim(shape)
+    growth = _GROWTH_AXIAL * shape.coarseness
+    largest = _LARGEST_AXIAL * shape.coarseness
     features = [f for f in shape.features if abs(f) < half - 0.1]
     corners = [-half, *features, half]
     at_feature = min(max(shape.sharpness, 0.05), _LARGEST_AXIAL)
@@ -172,22 +176,25 @@ def _axial_edges(shape: RodShape) -> Floats:
     for low, high in itertools.pairwise(corners):
         z = _samples(low, high)
         from_end = half - np.abs(z)
-        size = rim + _GROWTH_AXIAL * from_end
+        size = rim + growth * from_end
         away = from_end
         for feature in features:
             distance = np.abs(z - feature)
             size = np.minimum(size, at_feature + distance)
             away = np.minimum(away, distance)
-        size = np.minimum(size, np.maximum(_LARGEST_AXIAL, _FAR_GROWTH * away))
+        size = np.minimum(size, np.maximum(largest, _FAR_GROWTH * away))
         edges.append(_spread(low, high, z, 1.0 / size)[1:])
     return np.concatenate(edges)
 
 
-def _radial_edges(length: float) -> Floats:
-    rim = min(_AT_RIM, 0.05 * length)
+def _radial_edges(shape: RodShape) -> Floats:
     depth = np.concatenate(([0.0], np.geomspace(1e-4, 1.0, 200)))
     # However thin a disc, its faces are not cut finer than this in the middle.
-    largest = max(_LARGEST_RADIAL * min(1.0, length), _SMALLEST)
-    size = np.minimum(rim + _GROWTH_RADIAL * depth, largest)
+    largest = max(_LARGEST_RADIAL * shape.coarseness * min(1.0, shape.length), _SMALLEST)
+    size = np.minimum(_rim(shape) + _GROWTH_RADIAL * shape.coarseness * depth, largest)
     edges: Floats = 1.0 - _spread(0.0, 1.0, depth, 1.0 / size)[::-1]
     return edges
+
+
+def _rim(shape: RodShape) -> float:
+    return min(_AT_RIM * shape.coarseness**3, 0.05 * shape.length)
