@@ -16,10 +16,7 @@ from service.physics.wire import (
 )
 
 CONDUCTORS: dict[str, Conductor] = {
-    "copper": COPPER,
-    "aluminium": ALUMINIUM,
-    "copper-clad aluminium 10": COPPER_CLAD_ALUMINIUM_10,
-    "copper-clad aluminium 15": COPPER_CLAD_ALUMINIUM_15,
+    one.name: one for one in (COPPER, ALUMINIUM, COPPER_CLAD_ALUMINIUM_10, COPPER_CLAD_ALUMINIUM_15)
 }
 # Enamel adds 5-15 % to the mass of fine bare copper (common practice, no source); the middle.
 ENAMEL_MASS = 1.10
