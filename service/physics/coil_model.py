@@ -16,11 +16,12 @@ from numpy.typing import NDArray
 
 from service.physics.capacitance import RELATIVE_UNCERTAINTY as CAPACITANCE_UNCERTAINTY
 from service.physics.capacitance import self_capacitance
-from service.physics.design import Design
+from service.physics.caution import Caution
+from service.physics.design import NOTHING, Design
 from service.physics.inductance import coil_inductance
 from service.physics.lay import HEXAGONAL_PACKING, Lay, layer_lay, scatter_lay
 from service.physics.output import RELATIVE_UNCERTAINTY as OUTPUT_UNCERTAINTY
-from service.physics.output import Output, string_output
+from service.physics.output import Output, mean_axial_field, middle_pole, string_output
 from service.physics.poles import Pole, pole_response
 from service.physics.resistance import (
     conductor_mass,
@@ -33,6 +34,7 @@ from service.physics.resonance import self_capacitance_of_solenoid
 from service.physics.section import WindingSection
 from service.physics.uncertainty import Estimate
 from service.physics.voice_coil import force_factor, reflected_impedance
+from service.physics.working_point import magnet_pole_flux, pole_flux_over_bar
 
 FloatArray = NDArray[np.float64]
 Source = Literal["spool", "former", "magnets", "motor", "model", "coil"]
@@ -68,7 +70,7 @@ _POLE_MODEL_UNCERTAINTY: Final = 0.03
 _STEP: Final = 0.01
 # Tension of a layer winding for which none is stated, as a share of the wire's limit.
 _USUAL_TENSION: Final = 0.6
-_MEDHURST_SHAPES: Final = (0.1, 50.0)
+_MEDHURST_SHAPES: Final = (0.101, 49.9)
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,8 +96,10 @@ class CoilModel:
         lay: of the wire.
         section: the winding that carries the current.
         inputs: the uncertain inputs, in the order of the argument of `outputs_at`.
+        flux: density at the middle rod's top, T.
         output: of the string; None if the design has none.
         tension_limit: of the wire, N.
+        cautions: of the lay, and what could not be solved.
     """
 
     def __init__(self, design: Design) -> None:
@@ -110,10 +114,12 @@ class CoilModel:
             self.tension, wire.conductor_diameter_nominal, wire.conductor
         )
         self.lay = self._lay()
+        self.cautions: list[Caution] = list(self.lay.cautions)
         self.section = design.former.section(self.lay.outer_build, self.lay.height)
         self._solve_air()
         self._solve_poles()
         self._solve_shell()
+        self.flux = self._pole_flux()
         self.capacitance = self._capacitance()
         self.output = self._output()
         self.inputs = self._inputs()
@@ -160,26 +166,27 @@ class CoilModel:
         self.poles: tuple[Pole, ...] = tuple(
             replace(pole, susceptibility=share * pole.susceptibility) for pole in self.design.poles
         )
-        self._added = self._added_by(self.section) if self.poles else 0j
+        self._added = self._added_by() if self.poles else 0j
         self._added_powers: dict[str, complex] = {}
         if self._added == 0.0:
             return
+        # The rods' answer goes with the square of the coil's field at their places.
         thicker = _resized(self.section, {"build": self.section.build}, "build")
+        fields = [mean_axial_field(one, self.poles) for one in (self.section, thicker)]
+        squares = [float(field @ field) for field in fields]
         moved = {
-            "build": self._added_by(thicker),
-            "pole susceptibility": self._added_by(self.section, susceptibility=1.0 + _STEP),
-            "pole conductivity": self._added_by(self.section, conductivity=1.0 + _STEP),
+            "build": self._added * squares[1] / squares[0],
+            "pole susceptibility": self._added_by(susceptibility=1.0 + _STEP),
+            "pole conductivity": self._added_by(conductivity=1.0 + _STEP),
         }
         self._added_powers = {
             name: cmath.log(added / self._added) / math.log1p(_STEP)
             for name, added in moved.items()
         }
 
-    def _added_by(
-        self, section: WindingSection, susceptibility: float = 1.0, conductivity: float = 1.0
-    ) -> complex:
+    def _added_by(self, susceptibility: float = 1.0, conductivity: float = 1.0) -> complex:
         """Added inductance of one turn with the rods' material scaled by the factors."""
-        return pole_response(section, self.poles).added_inductance(
+        return pole_response(self.section, self.poles).added_inductance(
             [susceptibility * pole.susceptibility for pole in self.poles],
             [conductivity * pole.conductivity for pole in self.poles],
             self.design.test_frequency,
@@ -199,12 +206,40 @@ class CoilModel:
                 enhancement=1.0 + self._added / self._air,
             )
 
+    def _pole_flux(self) -> Estimate:
+        """On the axis at the top of the rod nearest the middle, T."""
+        design = self.design
+        if design.pole_flux_density is not None:
+            return design.pole_flux_density
+        if not self.poles:
+            return NOTHING
+        try:
+            if design.bar is not None:
+                found = pole_flux_over_bar(self.poles, design.bar)
+            elif design.magnet is not None:
+                found = magnet_pole_flux(self.poles, [design.magnet] * len(self.poles))
+            else:
+                return NOTHING
+        except ArithmeticError:
+            self.cautions.append(
+                Caution(
+                    "no-working-point",
+                    "No working point of the magnets was found: their flux and the output are "
+                    "left out.",
+                )
+            )
+            return NOTHING
+        middle = self.poles.index(middle_pole(self.poles))
+        value = found.values[middle]
+        return Estimate(value, found.relative_uncertainty * abs(value))
+
     def _capacitance(self) -> Estimate:
         if self.design.learned.capacitance is not None:
             return self.design.learned.capacitance
         wire = self.design.wire
-        if self.lay.neighbour_pairs == 0 and self.section.is_circular:
-            diameter = 2.0 * self.section.mean_radius
+        if self.lay.neighbour_pairs == 0:
+            # A single layer; one that is not round counts as a round one of equal length.
+            diameter = self.lay.mean_turn_length / math.pi
             least, most = _MEDHURST_SHAPES
             length = min(max(self.section.height, least * diameter), most * diameter)
             value = self_capacitance_of_solenoid(diameter, length)
@@ -217,8 +252,9 @@ class CoilModel:
         design = self.design
         if design.string is None:
             return None
-        flux = design.pole_flux_density.value
-        return string_output(self.section, design.turns, self.poles, flux, design.string)
+        return string_output(
+            self.section, design.turns, self.poles, abs(self.flux.value), design.string
+        )
 
     def _inputs(self) -> tuple[Input, ...]:
         design, wire = self.design, self.design.wire
@@ -262,7 +298,7 @@ class CoilModel:
                 ("pole inductance model", "1", Estimate(1.0, _POLE_MODEL_UNCERTAINTY), "model"),
                 ("pole susceptibility", "1", self._susceptibility(), "magnets"),
                 ("pole conductivity", "S/m", self._conductivity(), "magnets"),
-                ("pole flux density", "T", design.pole_flux_density, "magnets"),
+                ("pole flux density", "T", self.flux, "magnets"),
             ]
         if self.output is not None and self.output.fundamental > 0.0:
             rows.append(("string model", "1", Estimate(1.0, OUTPUT_UNCERTAINTY), "model"))

@@ -3,8 +3,10 @@
 from dataclasses import dataclass, field
 
 from service.physics.arguments import celsius, non_negative, positive, whole
+from service.physics.bar_magnet import BarMagnet
 from service.physics.former import Former
 from service.physics.guide import Scatter
+from service.physics.magnet import MagnetGrade
 from service.physics.output import VibratingString
 from service.physics.poles import Pole
 from service.physics.uncertainty import Estimate
@@ -53,7 +55,10 @@ class Design:
         turns_uncertainty: standard uncertainty of the count; 0 for a counter that is trusted.
         poles: magnetic rods inside, or one core.
         susceptibility_uncertainty, conductivity_uncertainty: relative, of the rods' material.
-        pole_flux_density: on the axis at the poles' tops, T.
+        magnet: grade of the rods, if they are magnets.
+        bar: magnet under soft rods; what it adds to the inductance is left out.
+        pole_flux_density: on the axis at the middle rod's top, T, if measured; else it follows
+            from the magnets.
         shell: a closed conducting former, which is a shorted turn.
         temperature: of the coil, °C; the spread of the magnets' temperature is not in it.
         temperature_uncertainty: K.
@@ -75,7 +80,9 @@ class Design:
     poles: tuple[Pole, ...] = ()
     susceptibility_uncertainty: float = 0.0
     conductivity_uncertainty: float = 0.0
-    pole_flux_density: Estimate = NOTHING
+    magnet: MagnetGrade | None = None
+    bar: BarMagnet | None = None
+    pole_flux_density: Estimate | None = None
     shell: Shell | None = None
     temperature: float = 20.0
     temperature_uncertainty: float = 0.5
@@ -90,6 +97,8 @@ class Design:
         whole("turns", self.turns, least=1)
         if self.scatter is not None and self.layers is not None:
             raise ValueError(f"layers must be None for a scattered winding, got {self.layers!r}")
+        if self.magnet is not None and self.bar is not None:
+            raise ValueError(f"bar must be None where rods are magnets, got {self.bar!r}")
         non_negative("turns_uncertainty", self.turns_uncertainty)
         non_negative("susceptibility_uncertainty", self.susceptibility_uncertainty)
         non_negative("conductivity_uncertainty", self.conductivity_uncertainty)

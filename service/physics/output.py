@@ -73,6 +73,11 @@ class Output:
     reason: str | None = None
 
 
+def middle_pole(poles: Sequence[Pole]) -> Pole:
+    """Return the pole nearest the coil's axis; of two equally near, the one at smaller x, y."""
+    return min(poles, key=lambda pole: (round(math.hypot(pole.x, pole.y), 9), pole.x, pole.y))
+
+
 def string_output(
     section: WindingSection,
     turns: float,
@@ -112,7 +117,10 @@ def string_output(
         return Output(0.0, 0.0, "The string is not ferrous: no magnet acts on it.")
     if not poles or top == 0.0:
         return Output(0.0, 0.0, "No magnetised pole stands under the string.")
-    middle = min(poles, key=lambda pole: (math.hypot(pole.x, pole.y), pole.x, pole.y))
+    middle = middle_pole(poles)
+    lowest = middle.offset + middle.length / 2.0 + string.distance - string.amplitude
+    if lowest - string.diameter / 2.0 <= section.height / 2.0:
+        return Output(0.0, 0.0, "The string would touch the winding: its distance is too small.")
     swing = np.cos(math.pi * (np.arange(_HEIGHTS) + 0.5) / _HEIGHTS)
     over = string.distance + string.amplitude * swing
     reach = max(_REACH * string.distance, _LEAST_REACH)
@@ -169,13 +177,28 @@ def _rod_field(pole: Pole, points: FloatArray, *, fine: bool) -> FloatArray:
 
 def _induced_magnetisations(section: WindingSection, poles: Sequence[Pole]) -> list[float]:
     """Mean magnetisation of each rod by one ampere-turn, 1/m, with its own demagnetisation."""
+    factors = [magnetometric_factor(pole.length / pole.diameter) for pole in poles]
+    return [
+        pole.susceptibility / (1.0 + factor * pole.susceptibility) * float(field)
+        for pole, factor, field in zip(
+            poles, factors, mean_axial_field(section, poles), strict=True
+        )
+    ]
+
+
+def mean_axial_field(section: WindingSection, poles: Sequence[Pole]) -> FloatArray:
+    """Return the coil's field along each rod's axis, averaged over the rod, for one ampere-turn.
+
+    Args:
+        section: the winding.
+        poles: rods; only their places count.
+
+    Returns:
+        Axial component of H in 1/m, one value a rod; 4 Gauss points, good to 1 %.
+    """
     t, weight = np.polynomial.legendre.leggauss(_AXIS_NODES)
     axes = np.array(
         [[(p.x, p.y, p.offset + s * p.length / 2.0) for s in t.tolist()] for p in poles]
     )
-    applied = magnetic_field(section, 1.0, axes)[..., 2] @ weight / 2.0
-    factors = [magnetometric_factor(pole.length / pole.diameter) for pole in poles]
-    return [
-        pole.susceptibility / (1.0 + factor * pole.susceptibility) * float(field)
-        for pole, factor, field in zip(poles, factors, applied, strict=True)
-    ]
+    along = magnetic_field(section, 1.0, axes)[..., 2]
+    return np.asarray(along @ weight / 2.0, dtype=np.float64)

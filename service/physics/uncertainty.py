@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.special import ndtr
 
-from service.physics.arguments import finite, non_negative
+from service.physics.arguments import finite, non_negative, whole
 
 FloatArray = NDArray[np.float64]
 Function = Callable[[FloatArray], float | Sequence[float] | FloatArray]
@@ -97,7 +97,9 @@ def propagate(function: Function, estimates: ArrayLike, covariance: ArrayLike) -
     return Propagated(values, (product + product.T) / 2.0)
 
 
-def sensitivities(function: Function, estimates: ArrayLike, scales: ArrayLike) -> FloatArray:
+def sensitivities(
+    function: Function, estimates: ArrayLike, scales: ArrayLike, levels: int = _LEVELS
+) -> FloatArray:
     """Return the derivatives of the outputs (down) by the inputs (across) at the estimates.
 
     Args:
@@ -105,19 +107,22 @@ def sensitivities(function: Function, estimates: ArrayLike, scales: ArrayLike) -
         estimates: the inputs' estimates.
         scales: for each input, over how much of it the derivative is wanted: its standard
             uncertainty. An input with scale 0 is not moved and has zeros.
+        levels: at most so many halvings of the step; 1 takes one plain central difference, in
+            error by about the square of the scale over the estimate.
 
     Raises:
-        ValueError: as `propagate`, or a negative scale.
+        ValueError: as `propagate`, a negative scale, or no level.
     """
     x = _vector("estimates", estimates)
     widths = _vector("scales", scales)
     if widths.shape != x.shape or (widths < 0.0).any():
         raise ValueError(f"scales must be {x.size} numbers from 0 up, got {widths.tolist()!r}")
+    whole("levels", levels, least=1)
     outputs = _outputs(function, x).size
     jacobian = np.zeros((outputs, x.size))
     for index, width in enumerate(widths.tolist()):
         if width > 0.0:
-            jacobian[:, index] = _sensitivity(function, x, index, width, outputs)
+            jacobian[:, index] = _sensitivity(function, x, index, width, outputs, levels)
     return jacobian
 
 
@@ -245,7 +250,12 @@ def _outputs(function: Function, x: FloatArray) -> FloatArray:
 
 
 def _sensitivity(
-    function: Function, x: FloatArray, index: int, uncertainty: float, outputs: int
+    function: Function,
+    x: FloatArray,
+    index: int,
+    uncertainty: float,
+    outputs: int,
+    levels: int,
 ) -> FloatArray:
     """Ridders' extrapolation of central differences; each output keeps its own best estimate."""
     size = abs(float(x[index]))
@@ -254,15 +264,17 @@ def _sensitivity(
         _LEAST_OF_UNCERTAINTY * uncertainty,
         _LEAST_OF_ESTIMATE * size,
     )
-    best = np.zeros(outputs)
+    best = np.zeros(0)
     error = np.full(outputs, np.inf)
     previous: list[FloatArray] = []
-    for level in range(_LEVELS):
+    for level in range(levels):
         upper, lower = x.copy(), x.copy()
         upper[index] += step
         lower[index] -= step
         width = upper[index] - lower[index]
         row = [(_outputs(function, upper) - _outputs(function, lower)) / width]
+        if level == 0:
+            best = row[0]
         for order in range(1, level + 1):
             factor = 4.0**order
             row.append((factor * row[order - 1] - previous[order - 1]) / (factor - 1.0))

@@ -173,6 +173,18 @@ class PolesPart(Body):
     material: Text
 
 
+class MagnetBarPart(Body):
+    """A bar magnet under soft rods, magnetised upward, centred below them."""
+
+    length_mm: Annotated[Number, Field(ge=1, le=500)] = Field(description="Along the row of rods.")
+    width_mm: Annotated[Number, Field(ge=1, le=200)]
+    thickness_mm: Annotated[Number, Field(ge=0.5, le=200)]
+    gap_mm: Annotated[Number, Field(ge=0, le=100)] = Field(
+        default=0.0, description="From the bar's upper face to the rods' lower ends."
+    )
+    material: Text
+
+
 class CorePart(Body):
     """A pole piece on the axis of a round coil."""
 
@@ -263,6 +275,7 @@ class RecipeBody(Body):
         default=None, description="Number of even layers; null to fill the height."
     )
     poles: PolesPart | None = None
+    magnet_bar: MagnetBarPart | None = Field(default=None, description="Under soft rods.")
     core: CorePart | None = Field(default=None, description="Pole piece of a round coil.")
     former_material: Text | None = Field(
         default=None, description="A closed metal former is a shorted turn."

@@ -3,9 +3,11 @@
 from typing import Final
 
 from service.errors import InvalidValue
+from service.physics.bar_magnet import BarMagnet
 from service.physics.design import NOTHING, Design, Learned, Shell
 from service.physics.former import Former
 from service.physics.guide import Scatter
+from service.physics.magnet import grade
 from service.physics.output import VibratingString
 from service.physics.pole_materials import PoleMaterial, pole_material
 from service.physics.poles import Pole
@@ -81,6 +83,8 @@ def to_design(body: RecipeBody, learned: Learned | None = None) -> Design:
         poles=() if material is None else _poles(body, material),
         susceptibility_uncertainty=material.susceptibility_uncertainty if material else 0.0,
         conductivity_uncertainty=material.conductivity_uncertainty if material else 0.0,
+        magnet=material.grade if material else None,
+        bar=_bar(body, material),
         shell=_shell(body),
         temperature=conditions.temperature_c,
         test_frequency=conditions.test_frequency_hz,
@@ -240,6 +244,36 @@ def _rod(part: PolesPart | CorePart, material: PoleMaterial, place: tuple[float,
         part.offset_mm * MILLI,
         material.susceptibility,
         material.conductivity,
+    )
+
+
+def _bar(body: RecipeBody, material: PoleMaterial | None) -> BarMagnet | None:
+    part, poles = body.magnet_bar, body.poles
+    if part is None:
+        return None
+    if poles is None or material is None or material.grade is not None:
+        raise InvalidValue(
+            "A bar magnet stands under soft rods only.",
+            pointer="/magnet_bar",
+            mend="Give poles of steel, or leave out the bar.",
+        )
+    try:
+        magnet = grade(part.material)
+    except ValueError as error:
+        raise InvalidValue(
+            f"There is no magnet of this name: {error}.",
+            pointer="/magnet_bar/material",
+            value=part.material,
+            mend="Choose one of the magnets named.",
+        ) from error
+    lengthwise = body.former.straight_x_mm >= body.former.straight_y_mm
+    along, across = part.length_mm * MILLI, part.width_mm * MILLI
+    return BarMagnet(
+        along if lengthwise else across,
+        across if lengthwise else along,
+        part.thickness_mm * MILLI,
+        (poles.offset_mm - poles.length_mm / 2.0 - part.gap_mm) * MILLI,
+        magnet,
     )
 
 

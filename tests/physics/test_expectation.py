@@ -10,6 +10,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from service.physics import coil_model
+from service.physics.bar_magnet import BarMagnet
 from service.physics.capacitance import self_capacitance
 from service.physics.coil_model import CoilModel
 from service.physics.design import Design, Learned, Shell
@@ -17,6 +19,7 @@ from service.physics.expectation import Expectation, covariance_between, expect
 from service.physics.former import Former
 from service.physics.guide import Scatter
 from service.physics.inductance import coil_inductance
+from service.physics.magnet import grade
 from service.physics.output import VibratingString
 from service.physics.poles import Pole, inductance_with_poles
 from service.physics.resistance import winding_resistance
@@ -112,7 +115,7 @@ def test_sensitivities_agree_with_predicting_again(
     more, less = expect(moved(PICKUP, 1.03)), expect(moved(PICKUP, 0.97))
     for output in (*names, "air_inductance"):
         again = math.log(value(more, output) / value(less, output)) / math.log(1.03 / 0.97)
-        assert EXPECTED.elasticity(output, name) == pytest.approx(again, abs=0.02), output
+        assert EXPECTED.elasticity(output, name) == pytest.approx(again, abs=0.03), output
 
 
 def _spool(share: float) -> Estimate:
@@ -271,6 +274,41 @@ def test_force_factor_is_flux_density_times_length() -> None:
     assert value(EXPECTED, "force_factor") == 0.0
 
 
+def test_magnets_under_or_in_the_coil_give_flux_and_a_measured_flux_replaces_them() -> None:
+    string = PICKUP.string
+    rods = expect(replace(PICKUP, pole_flux_density=None, magnet=grade("alnico 5")))
+    # Common practice, no source: 80 to 120 mT at the end of such rods, by a probe that sits
+    # 0.3 to 1 mm inside its tip, hence above the face.
+    assert 0.08 < value(rods, "pole_flux_density") < 0.16
+    steel = tuple(replace(pole, susceptibility=180.0, conductivity=6e6) for pole in POLES)
+    bar = BarMagnet(0.060, 0.0125, 0.0032, -0.0085, grade("ferrite C5"))
+    over = expect(replace(PICKUP, poles=steel, pole_flux_density=None, bar=bar, string=string))
+    assert 0.01 < value(over, "pole_flux_density") < 0.10
+    assert value(over, "output") > 0.0
+    none = expect(replace(PICKUP, poles=steel, pole_flux_density=None))
+    assert value(none, "output") == value(none, "pole_flux_density") == 0.0
+    assert value(EXPECTED, "pole_flux_density") == 0.08
+
+
+def test_magnets_without_a_working_point_cost_the_output_only(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    def lost(*_: Any) -> Any:
+        raise ArithmeticError("lost")
+
+    monkeypatch.setattr(coil_model, "magnet_pole_flux", lost)
+    found = expect(replace(PICKUP, pole_flux_density=None, magnet=grade("alnico 5")))
+    assert value(found, "output") == 0.0
+    assert value(found, "inductance") == value(EXPECTED, "inductance")
+    assert "no-working-point" in [caution.code for caution in found.cautions]
+
+
+def test_one_turn_can_be_predicted() -> None:
+    one = expect(replace(AIR, turns=1))
+    assert value(one, "self_resonance") > 1e6
+    assert value(one, "wire_length") == pytest.approx(0.123, rel=0.01)
+
+
 def test_a_single_layer_has_the_capacitance_of_a_solenoid() -> None:
     single = expect(replace(VOICE_COIL, turns=50, layers=1))
     assert 0.5e-12 < value(single, "self_capacitance") < 3e-12
@@ -314,6 +352,14 @@ def test_aluminium_is_lighter_and_resists_more() -> None:
         ({"turns": 0}, "turns"),
         ({"turns": 10.5}, "turns"),
         ({"layers": 2}, "layers"),
+        (
+            {
+                "magnet": grade("alnico 5"),
+                "bar": BarMagnet(0.06, 0.01, 0.003, -0.01, grade("ferrite C5")),
+            },
+            "bar",
+        ),
+        ({"conductivity_uncertainty": -0.1}, "conductivity_uncertainty"),
         ({"temperature": -300.0}, "temperature"),
         ({"test_frequency": 0.0}, "test_frequency"),
         ({"turns_uncertainty": -1.0}, "turns_uncertainty"),

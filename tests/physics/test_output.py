@@ -82,6 +82,14 @@ def test_without_a_magnet_there_is_nothing_to_say(poles: tuple[Pole, ...], top: 
     assert "magnet" in found.reason
 
 
+def test_a_string_inside_the_winding_gives_nothing_and_says_why() -> None:
+    short = tuple(Pole(p.x, 0.0, 0.0048, 0.004, 0.0, 3.3) for p in POLES)
+    found = string_output(COIL, TURNS, short, TOP, steel())
+    assert found.fundamental == 0.0
+    assert found.reason is not None
+    assert "touch the winding" in found.reason
+
+
 def test_a_string_at_rest_gives_nothing() -> None:
     assert fundamental(steel(amplitude=0.0)) == 0.0
 

@@ -72,6 +72,13 @@ def test_sensitivities_are_the_derivatives() -> None:
     assert found == pytest.approx(np.array([[3.0, 9.0], [0.0, math.cos(0.5)]]), abs=1e-9)
 
 
+def test_one_level_is_a_plain_central_difference() -> None:
+    found = sensitivities(lambda p: p[0] ** 3, [2.0], [0.01], levels=1)
+    assert found[0, 0] == pytest.approx(12.0 + 0.01**2, rel=1e-9)
+    with pytest.raises(ValueError, match="levels"):
+        sensitivities(lambda p: p[0], [1.0], [0.1], levels=0)
+
+
 @pytest.mark.parametrize("scales", [[0.1], [0.1, -0.1], [0.1, math.nan]])
 def test_impossible_scales_are_named(scales: list[float]) -> None:
     with pytest.raises(ValueError, match="scales"):

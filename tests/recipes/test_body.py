@@ -184,6 +184,19 @@ def test_an_impossible_limit_is_refused(limit: dict[str, Any]) -> None:
         RecipeBody.model_validate(with_(EXAMPLE, "tolerance.stage_limits", [limit]))
 
 
+BAR = {"length_mm": 60.0, "width_mm": 12.5, "thickness_mm": 3.2, "material": "ferrite C5"}
+
+
+def test_a_bar_stands_below_soft_rods_along_their_row() -> None:
+    poles = {**EXAMPLE["poles"], "material": "steel"}
+    former = {**EXAMPLE["former"], "straight_x_mm": 0.0, "straight_y_mm": 52.0}
+    changed = {**EXAMPLE, "former": former, "poles": poles, "magnet_bar": {**BAR, "gap_mm": 0.2}}
+    bar = to_design(RecipeBody.model_validate(changed)).bar
+    assert bar is not None
+    assert (bar.length, bar.width) == (0.0125, 0.06)
+    assert bar.top == pytest.approx(-0.0087)
+
+
 # Parts that are possible each but not together: example, change, pointer of the problem.
 UNFIT = [
     (EXAMPLE, {"former.straight_x_mm": 0.0, "former.corner_radius_mm": 0.0, "poles": None},
@@ -200,6 +213,10 @@ UNFIT = [
     (EXAMPLE, {"string": {"amplitude_mm": 3.5}}, "/string/amplitude_mm"),
     (EXAMPLE, {"poles": None,
                "core": {"diameter_mm": 5.0, "length_mm": 9.0, "material": "alnico 5"}}, "/core"),
+    (EXAMPLE, {"magnet_bar": BAR}, "/magnet_bar"),
+    (EXAMPLE, {"poles": None, "magnet_bar": BAR}, "/magnet_bar"),
+    (EXAMPLE, {"poles.material": "steel", "magnet_bar": {**BAR, "material": "cheese"}},
+     "/magnet_bar/material"),
     (VOICE_COIL_EXAMPLE, {"layers": 150}, "/layers"),
     (VOICE_COIL_EXAMPLE, {"former.winding_height_mm": 0.2}, "/former/winding_height_mm"),
     (VOICE_COIL_EXAMPLE, {"former_thickness_mm": 13.0}, "/former_thickness_mm"),
