@@ -1,16 +1,8 @@
 """How the wire of a recipe lies for another number of turns than the recipe's."""
 
-import math
-from dataclasses import dataclass
-
 from service.physics.design import Design
 from service.physics.lay import Lay, layer_lay, scatter_lay
-from service.physics.resistance import (
-    conductor_mass,
-    spool_length,
-    stretch_by_tension,
-    tension_limit,
-)
+from service.physics.resistance import spool_length, stretch_by_tension, tension_limit
 from service.recipes.body import RecipeBody
 from service.recipes.building import to_design
 from service.recipes.rules import UNWINDABLE, most_turns
@@ -19,14 +11,6 @@ from service.recipes.rules import UNWINDABLE, most_turns
 _PLAYED_AT_MOST = 2
 # Tension of even layers, for which a recipe states none, as a share of the wire's limit.
 _USUAL_TENSION = 0.6
-
-
-@dataclass(frozen=True)
-class Wire:
-    """What a coil takes off the spool; the mass is the bare conductor's."""
-
-    length_m: float
-    mass_kg: float
 
 
 def _lay(design: Design, turns: int) -> Lay:
@@ -53,8 +37,8 @@ def turns_that_fit(body: RecipeBody) -> int:
     return most_turns(fits, body.turns)
 
 
-def wire_for(body: RecipeBody, turns: float) -> Wire:
-    """The wire that a coil with ``turns`` turns of this recipe takes off the spool.
+def wire_for(body: RecipeBody, turns: float) -> float:
+    """Metres of wire that a coil with ``turns`` turns of this recipe takes off the spool.
 
     The lay is played anew, since the mean turn grows with the build. Wire stretched in winding
     leaves the spool shorter than it lies on the coil.
@@ -66,6 +50,5 @@ def wire_for(body: RecipeBody, turns: float) -> Wire:
     tension = _USUAL_TENSION * _tension_limit(design)
     if design.scatter is not None:
         tension = design.scatter.tension
-    stretch = stretch_by_tension(tension, wire.conductor_diameter_nominal, wire.conductor).value
-    area = math.pi / 4.0 * wire.conductor_diameter_nominal**2
-    return Wire(spool_length(laid, stretch), conductor_mass(laid, area, wire.conductor, stretch))
+    stretch = stretch_by_tension(tension, wire.conductor_diameter_nominal, wire.conductor)
+    return spool_length(laid, stretch.value)

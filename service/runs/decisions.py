@@ -25,12 +25,14 @@ def decide(
     regrade_recipe_id: uuid.UUID | None,
     conformity: str | None,
     now: datetime,
+    judged_at: datetime | None = None,
 ) -> Disposition:
     """Record a decision and move the run where it leads.
 
     ``conformity`` is that of the run's last verdict, None without one: a coil is released only
-    where it conforms. Raises WrongState, NotAllowed, or InvalidValue where the decision does not
-    say what it must.
+    where it conforms. ``judged_at`` is when that verdict was given; one from before the coil was
+    wound again or reworked does not count. Raises WrongState, NotAllowed, or InvalidValue where
+    the decision does not say what it must.
     """
     to_itself = None
     if regrade_recipe_id is not None:
@@ -42,7 +44,7 @@ def decide(
     before = run.state
     state = rules.next_state(RunState(run.state), move, actor.roles)
     if move is Move.RELEASE:
-        refusal = rules.release_refusal(conformity)
+        refusal = rules.release_refusal(conformity, judged_at, _last_worked_on(run))
         if refusal is not None:
             raise WrongState(
                 f"This coil cannot be released. {refusal}",
@@ -80,3 +82,14 @@ def decide(
         reason=reason,
     )
     return decision
+
+
+def _last_worked_on(run: Run) -> datetime | None:
+    """When the coil was last changed: taken off the machine, or given to be reworked."""
+    ended = [attempt.ended_at for attempt in run.attempts if attempt.ended_at is not None]
+    reworked = [
+        decision.decided_at
+        for decision in run.dispositions
+        if decision.kind in (Move.REWORK, Move.REPAIR)
+    ]
+    return max(ended + reworked, default=None)

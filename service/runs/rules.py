@@ -4,6 +4,7 @@ Dispositions are the words of ISO 9000:2015, clause 3.12 (from memory).
 """
 
 from dataclasses import dataclass
+from datetime import datetime
 from enum import StrEnum
 
 from service.errors import ConfirmationNeeded, InvalidValue, NotAllowed, WrongState
@@ -139,16 +140,23 @@ def next_state(state: RunState, move: Move, roles: frozenset[str]) -> RunState:
     return step.to
 
 
-def release_refusal(conformity: str | None) -> str | None:
+def release_refusal(
+    conformity: str | None,
+    judged_at: datetime | None = None,
+    worked_on_at: datetime | None = None,
+) -> str | None:
     """Why a coil may not simply be released, or None where it may.
 
-    A coil that does not conform, or of which it is not decided, leaves by concession only.
+    A coil that does not conform, or of which it is not decided, leaves by concession only. A
+    verdict given before the coil was last worked on tells of another coil than this one.
     """
-    if conformity == "conforms":
-        return None
     if conformity is None:
         return "It has no verdict yet."
-    return f"Its last verdict is “{conformity}”."
+    if conformity != "conforms":
+        return f"Its last verdict is “{conformity}”."
+    if judged_at is not None and worked_on_at is not None and judged_at < worked_on_at:
+        return "It was wound or reworked after its last verdict."
+    return None
 
 
 # A count this far from the recipe's is asked back: a coil given up early, or a slip of the pen.

@@ -7,7 +7,9 @@ import sqlalchemy as sa
 from sqlalchemy.orm import Session
 
 from service.errors import InvalidValue, NotFound, WrongState
+from service.physics.wire import StandardWire
 from service.recipes.acts import body_of
+from service.recipes.building import to_design
 from service.recipes.winding import wire_for
 from service.runs import rules
 from service.runs.holding import hold_run, move_run
@@ -17,6 +19,7 @@ from service.runs.rules import Move, RunState, WireKind
 from service.shop.models import Machine
 from service.stock.acts import draw_wire
 from service.stock.models import MagnetLot, Spool
+from service.stock.rules import wire_of
 from service.storage.events import AttemptEnded, AttemptStarted, MachineTurns, publish
 from service.storage.records import Actor, record
 from service.storage.serials import shown
@@ -131,16 +134,17 @@ def _fitting_spool(session: Session, spool_id: uuid.UUID, run: Run) -> Spool:
     spool = session.get(Spool, spool_id)
     if spool is None:
         raise NotFound("There is no such spool.", pointer="/spool", value=str(spool_id))
-    wire = body_of(run.revision).wire
-    refusal = rules.spool_refusal(
-        WireKind(wire.conductor, wire.size, wire.build),
-        WireKind(spool.conductor, spool.wire_size, spool.wire_build),
-        spool.state,
-    )
+    wanted = to_design(body_of(run.revision)).wire
+    loaded = wire_of(spool.wire_size, spool.wire_build, spool.conductor)
+    refusal = rules.spool_refusal(_kind(wanted), _kind(loaded), spool.state)
     if refusal is not None:
         detail, mend = refusal
         raise InvalidValue(detail, pointer="/spool", value=spool.serial, mend=mend)
     return spool
+
+
+def _kind(wire: StandardWire) -> WireKind:
+    return WireKind(wire.conductor.name, wire.designation, wire.build)
 
 
 def finish(
@@ -277,13 +281,6 @@ def _end(session: Session, attempt: Attempt, actor: Actor, outcome: str, now: da
 def _draw(
     session: Session, run: Run, attempt: Attempt, turns: float, purpose: str, now: datetime
 ) -> None:
-    wire = wire_for(body_of(run.revision), turns)
-    attempt.wire_length_m = wire.length_m
-    draw_wire(
-        session,
-        attempt.spool,
-        length_m=wire.length_m,
-        mass_kg=wire.mass_kg,
-        purpose=purpose,
-        now=now,
-    )
+    length = wire_for(body_of(run.revision), turns)
+    attempt.wire_length_m = length
+    draw_wire(session, attempt.spool, length_m=length, purpose=purpose, now=now)
