@@ -12,53 +12,61 @@ _PROCESS = {"signal": "▲ signal"}
 
 
 def coils_table(address: str) -> Table:
-    """One line a reading: expected for this very coil, measured, and the three answers."""
-    table = Table(title="Coils (all invented)", show_lines=False)
-    for name in ("coil", "recipe", "turns"):
-        table.add_column(name, no_wrap=True)
-    for name in ("R expected", "R measured", "L expected", "L measured"):
-        table.add_column(name, justify="right", no_wrap=True)
-    for name in ("does it conform?", "as predicted?", "drift?", "state"):
-        table.add_column(name)
+    """One row a reading: expected for this very coil, measured, and the three answers."""
+    table = Table(title="Coils (all invented)", show_lines=True)
+    table.add_column("coil, recipe, turns", no_wrap=True)
+    table.add_column("R expected\nand measured", justify="right", no_wrap=True)
+    table.add_column("L expected\nand measured", justify="right", no_wrap=True)
+    table.add_column("does it conform? as predicted?\ndoes the process drift? now")
     api = Client(address, AUDITOR, PASSWORD)
     try:
         for run in reversed(api.get("/runs", limit=200)):
             for verdict in reversed(api.get(f"/runs/{run['serial']}/verdicts")):
-                table.add_row(*_line(run, verdict))
+                table.add_row(*_row(run, verdict))
     finally:
         api.close()
     return table
 
 
-def _line(run: dict[str, Any], verdict: dict[str, Any]) -> list[str]:
+def _row(run: dict[str, Any], verdict: dict[str, Any]) -> list[str]:
     agreement = verdict["reasoning"]["agreement"]
     found = {one["characteristic"]: one for one in agreement["differences"]}
-    causes = agreement["causes"]
-    predicted = verdict["agreement"]
-    if causes:
-        predicted += f": {causes[0]['cause']} ({100 * causes[0]['probability']:.0f} %)"
-    resistance, inductance = found.get("resistance"), found.get("inductance")
-    return [
-        run["label"],
-        run["recipe"]["recipe"].removesuffix(" (invented)"),
-        f"{agreement['turns']}",
-        _quantity(resistance, "expected", 1.0, "Ω"),
-        _quantity(resistance, "measured", 1.0, "Ω"),
-        _quantity(inductance, "expected", 1.0, "H"),
-        _quantity(inductance, "measured", 1.0, "H"),
+    recipe = run["recipe"]["recipe"].removesuffix(" (invented)")
+    answers = [
         _CONFORMITY.get(verdict["conformity"], f"■ {verdict['conformity']}"),
-        predicted,
-        _PROCESS.get(verdict["process"], verdict["process"]),
-        run["state"],
+        _predicted(verdict["agreement"], agreement),
+        f"{_PROCESS.get(verdict['process'], verdict['process'])}; {run['state']}",
     ]
+    return [
+        f"{run['label']}\n{recipe}\n{agreement['turns']}",
+        _pair(found.get("resistance"), "Ω"),
+        _pair(found.get("inductance"), "H"),
+        "\n".join(answers),
+    ]
+
+
+def _predicted(answer: str, agreement: dict[str, Any]) -> str:
+    """The second answer with its likeliest cause, and one that looks the same."""
+    if not agreement["causes"]:
+        return answer
+    likely = agreement["causes"][0]
+    groups: list[list[str]] = agreement["not_told_apart"]
+    alike = next((group for group in groups if likely["cause"] in group), [])
+    others = [cause for cause in alike if cause != likely["cause"]]
+    words = f"{answer}: {likely['cause']} ({100 * likely['probability']:.0f} %)"
+    return f"{words}, or {others[0]}" if others else words
 
 
 _PREFIXES = ((1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"))
 
 
-def _quantity(found: dict[str, Any] | None, what: str, factor: float, unit: str) -> str:
+def _pair(found: dict[str, Any] | None, unit: str) -> str:
     if found is None:
         return "–"
-    value, doubt = found[what] * factor, found[f"{what}_uncertainty"] * factor
+    return f"{_quantity(found, 'expected', unit)}\n{_quantity(found, 'measured', unit)}"
+
+
+def _quantity(found: dict[str, Any], what: str, unit: str) -> str:
+    value, doubt = found[what], found[f"{what}_uncertainty"]
     scale, prefix = next((pair for pair in _PREFIXES if abs(value) >= pair[0]), _PREFIXES[-1])
-    return f"{value / scale:.4g} ± {doubt / scale:.2g} {prefix}{unit}"
+    return f"{value / scale:.4g} ± {doubt / scale:.1g} {prefix}{unit}"

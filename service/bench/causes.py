@@ -8,7 +8,7 @@ a coupled-circuit calculation (shorted turns).
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,6 +19,8 @@ FloatArray = NDArray[np.float64]
 CHARACTERISTICS = ("resistance", "inductance", "self_resonance", "quality_factor")
 # Two causes whose directions are this nearly parallel, seen through the noise, look the same.
 _PARALLEL = 0.98
+# A slip of a few turns is as likely on a short coil as on a long one (common practice).
+_FEW_TURNS = 3.0
 
 
 @dataclass(frozen=True)
@@ -158,22 +160,49 @@ class Diagnosis:
     next_reading: str | None
 
 
-def diagnose(names: Sequence[str], logs: FloatArray, covariance: FloatArray) -> Diagnosis:
+@dataclass(frozen=True)
+class TurnsLaw:
+    """How this very coil answers to its turns: relative change by characteristic for one per cent
+    of turns, and how many turns it has."""
+
+    elasticities: tuple[float, float, float, float]
+    turns: int
+
+
+def causes_for(law: TurnsLaw) -> tuple[Cause, ...]:
+    """The causes with the miscount as this coil shows it.
+
+    A voice coil has a hundred turns, so that some turns are some per cent.
+    """
+    few = _FEW_TURNS / law.turns
+    return tuple(
+        replace(cause, direction=law.elasticities, spread=math.hypot(cause.spread, few))
+        if cause.name == "miscount"
+        else cause
+        for cause in CAUSES
+    )
+
+
+def diagnose(
+    names: Sequence[str], logs: FloatArray, covariance: FloatArray, law: TurnsLaw
+) -> Diagnosis:
     """Rank the causes by Bayes' rule.
 
     Args:
         names: of the characteristics that were measured, n of them, from CHARACTERISTICS.
         logs: ln(measured / expected), shape (n,).
         covariance: of ``logs`` where nothing is wrong, shape (n, n).
+        law: what a turn more or less does to this coil.
 
     Each cause has a normal prior on its size (cut at zero where it acts one way), integrated
     analytically. The probabilities are among these causes, given that one of them is at work.
     """
     places = [CHARACTERISTICS.index(name) for name in names]
     inverse = np.asarray(np.linalg.inv(covariance), dtype=np.float64)
-    seen = [np.array(cause.direction)[places] for cause in CAUSES]
+    causes = causes_for(law)
+    seen = [np.array(cause.direction)[places] for cause in causes]
     fits = [
-        _fit(cause, direction, logs, inverse) for cause, direction in zip(CAUSES, seen, strict=True)
+        _fit(cause, direction, logs, inverse) for cause, direction in zip(causes, seen, strict=True)
     ]
     logs_of = np.array([fit[0] for fit in fits])
     weights = np.exp(logs_of - logs_of.max())
@@ -213,11 +242,17 @@ def _fit(
 def _alike(
     likely: Sequence[int], seen: Sequence[FloatArray], inverse: FloatArray
 ) -> tuple[tuple[str, ...], ...]:
-    """Groups of likely causes whose directions look the same through this noise."""
+    """Groups of likely causes whose directions look the same through this noise.
+
+    A cause that acts both ways looks the same as one against it.
+    """
     groups: list[list[int]] = []
     for k in likely:
         for group in groups:
-            if _cosine(seen[k], seen[group[0]], inverse) > _PARALLEL:
+            cosine = _cosine(seen[k], seen[group[0]], inverse)
+            if not (CAUSES[k].one_sided and CAUSES[group[0]].one_sided):
+                cosine = abs(cosine)
+            if cosine > _PARALLEL:
                 group.append(k)
                 break
         else:

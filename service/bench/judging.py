@@ -9,7 +9,7 @@ import numpy as np
 from sqlalchemy.orm import Session
 
 from service.bench import rules
-from service.bench.causes import diagnose
+from service.bench.causes import CHARACTERISTICS, TurnsLaw, diagnose
 from service.bench.reading import (
     Measured,
     Meter,
@@ -165,7 +165,8 @@ def judge(run: Run, expectation: Expectation, reading: Reading, stage: str) -> J
     diagnosis = None
     names = [one.characteristic for one in agreed.differences]
     if agreed.answer == "not as predicted":
-        diagnosis = diagnose(names, agreed.logs, agreed.covariance)
+        law = TurnsLaw(_turns_elasticities(expectation), expectation.design.turns)
+        diagnosis = diagnose(names, agreed.logs, agreed.covariance, law)
     reasoning = {
         "conformity": {
             "rule": rules.DECISION_RULE,
@@ -195,6 +196,12 @@ def judge(run: Run, expectation: Expectation, reading: Reading, stage: str) -> J
         reasoning,
         expectation.kernel_version,
     )
+
+
+def _turns_elasticities(expectation: Expectation) -> tuple[float, float, float, float]:
+    """What one per cent of turns does to each characteristic, in their order."""
+    found = [expectation.elasticity(_OUTPUTS[name], "turns") for name in CHARACTERISTICS]
+    return found[0], found[1], found[2], found[3]
 
 
 def _agreement(expectation: Expectation, measured: Mapping[str, Measured]) -> Agreement:
