@@ -333,3 +333,28 @@ def test_the_acts_refuse_what_the_routes_refuse(
                 magnet_lot_id=None,
                 now=datetime.now(UTC),
             )
+
+
+def test_a_longer_list_asks_the_database_no_more_often(lead: Hands, database: Database) -> None:
+    statements: list[str] = []
+
+    def note(_c: object, _u: object, statement: str, *_rest: object) -> None:
+        statements.append(statement)
+
+    def asked(path: str) -> int:
+        statements.clear()
+        assert lead.client.get(path).status_code == 200
+        return len(statements)
+
+    order = lead.ordered(30)
+    for serial in lead.plan(2, order=order):
+        lead.start(serial)
+        lead.finish(serial)
+    sa.event.listen(database.reader, "before_cursor_execute", note)
+    few = asked("/api/v1/runs"), asked("/api/v1/orders")
+    for _ in range(3):
+        lead.ordered(1)
+    for serial in lead.plan(6, order=order)[:4]:
+        lead.start(serial)
+        lead.finish(serial)
+    assert (asked("/api/v1/runs"), asked("/api/v1/orders")) == few
