@@ -8,8 +8,8 @@ a few more field solutions instead of hundreds.
 
 import cmath
 import math
-from dataclasses import dataclass, replace
-from typing import Final, Literal
+from dataclasses import replace
+from typing import Final
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,10 +17,10 @@ from numpy.typing import NDArray
 from service.physics.capacitance import RELATIVE_UNCERTAINTY as CAPACITANCE_UNCERTAINTY
 from service.physics.capacitance import self_capacitance
 from service.physics.caution import Caution
+from service.physics.coil_inputs import Known, uncertain_inputs
 from service.physics.design import NOTHING, Design
 from service.physics.inductance import coil_inductance
 from service.physics.lay import HEXAGONAL_PACKING, Lay, layer_lay, scatter_lay
-from service.physics.output import RELATIVE_UNCERTAINTY as OUTPUT_UNCERTAINTY
 from service.physics.output import Output, mean_axial_field, middle_pole, string_output
 from service.physics.poles import Pole, pole_response
 from service.physics.resistance import (
@@ -37,7 +37,6 @@ from service.physics.voice_coil import force_factor, reflected_impedance
 from service.physics.working_point import magnet_pole_flux, pole_flux_over_bar
 
 FloatArray = NDArray[np.float64]
-Source = Literal["spool", "former", "magnets", "motor", "model", "coil"]
 
 OUTPUTS: Final = (
     "resistance",
@@ -57,35 +56,10 @@ OUTPUTS: Final = (
     "force_factor",
 )
 
-# Standard uncertainties that no drawing tells; common practice, no source. Lengths in m.
-_FORMER_UNCERTAINTY: Final = 0.05e-3
-_ROUND_FORMER_UNCERTAINTY: Final = 0.02e-3
-_SCATTER_PACKING_UNCERTAINTY: Final = 0.05
-_LAYER_PACKING_UNCERTAINTY: Final = 0.02
-# The lay is not quite even and straight sides bow; a winding has no uniform current density;
-# rods stand a little off their places and sources differ on their materials' field dependence.
-_MEAN_TURN_UNCERTAINTY: Final = 0.003
-_AIR_MODEL_UNCERTAINTY: Final = 0.005
-_POLE_MODEL_UNCERTAINTY: Final = 0.03
 _STEP: Final = 0.01
 # Tension of a layer winding for which none is stated, as a share of the wire's limit.
 _USUAL_TENSION: Final = 0.6
 _MEDHURST_SHAPES: Final = (0.101, 49.9)
-
-
-@dataclass(frozen=True, slots=True)
-class Input:
-    """One uncertain input in its SI unit, and what has the same error in common.
-
-    `source` tells which coils share the error: spool (all coils of the spool), former, magnets,
-    motor (all of that lot), model (all coils of the recipe), coil (this coil alone).
-    """
-
-    name: str
-    unit: str
-    value: float
-    standard_uncertainty: float
-    source: Source
 
 
 class CoilModel:
@@ -122,7 +96,16 @@ class CoilModel:
         self.flux = self._pole_flux()
         self.capacitance = self._capacitance()
         self.output = self._output()
-        self.inputs = self._inputs()
+        known = Known(
+            lay=self.lay,
+            per_metre=self.per_metre,
+            stretch=self.stretch,
+            capacitance=self.capacitance,
+            poles=self.poles,
+            flux=self.flux,
+            has_output=self.output is not None and self.output.fundamental > 0.0,
+        )
+        self.inputs = uncertain_inputs(design, known)
         self._place = {one.name: index for index, one in enumerate(self.inputs)}
 
     def _lay(self) -> Lay:
@@ -255,71 +238,6 @@ class CoilModel:
         return string_output(
             self.section, design.turns, self.poles, abs(self.flux.value), design.string
         )
-
-    def _inputs(self) -> tuple[Input, ...]:
-        design, wire = self.design, self.design.wire
-        band = (wire.overall_diameter_max - wire.overall_diameter_min) / 2.0 / math.sqrt(3.0)
-        packing = design.learned.packing or Estimate(
-            self.lay.packing,
-            self.lay.packing
-            * (_SCATTER_PACKING_UNCERTAINTY if design.scatter else _LAYER_PACKING_UNCERTAINTY),
-        )
-        overall = wire.overall_diameter_nominal
-        rows: list[tuple[str, str, Estimate, Source]] = [
-            ("wire resistance per metre", "ohm/m", self.per_metre, "spool"),
-            ("wire overall diameter", "m", Estimate(overall, band), "spool"),
-            ("packing", "1", packing, "model"),
-            ("stretch", "1", self.stretch, "model"),
-            ("turns", "1", Estimate(design.turns, design.turns_uncertainty), "coil"),
-            ("mean turn", "1", Estimate(1.0, _MEAN_TURN_UNCERTAINTY), "model"),
-        ]
-        former = design.former
-        tight = former.straight_x == former.straight_y == 0.0
-        doubt = _ROUND_FORMER_UNCERTAINTY if tight else _FORMER_UNCERTAINTY
-        for name, size in (
-            ("former straight x", former.straight_x),
-            ("former straight y", former.straight_y),
-            ("former corner radius", former.corner_radius),
-        ):
-            if size > 0.0:
-                rows.append((name, "m", Estimate(size, doubt), "former"))
-        if design.scatter is not None:
-            height = Estimate(former.winding_height, _FORMER_UNCERTAINTY)
-            rows.append(("winding height", "m", height, "former"))
-        temperature = Estimate(design.temperature, design.temperature_uncertainty)
-        rows += [
-            ("coil temperature", "°C", temperature, "coil"),
-            ("lead resistance", "ohm", design.lead_resistance, "coil"),
-            ("air inductance model", "1", Estimate(1.0, _AIR_MODEL_UNCERTAINTY), "model"),
-            ("self-capacitance", "F", self.capacitance, "model"),
-        ]
-        if self.poles:
-            rows += [
-                ("pole inductance model", "1", Estimate(1.0, _POLE_MODEL_UNCERTAINTY), "model"),
-                ("pole susceptibility", "1", self._susceptibility(), "magnets"),
-                ("pole conductivity", "S/m", self._conductivity(), "magnets"),
-                ("pole flux density", "T", self.flux, "magnets"),
-            ]
-        if self.output is not None and self.output.fundamental > 0.0:
-            rows.append(("string model", "1", Estimate(1.0, OUTPUT_UNCERTAINTY), "model"))
-        if design.gap_flux_density is not None:
-            rows.append(("gap flux density", "T", design.gap_flux_density, "motor"))
-        return tuple(
-            Input(name, unit, float(known.value), float(known.standard_uncertainty), source)
-            for name, unit, known, source in rows
-        )
-
-    def _susceptibility(self) -> Estimate:
-        """Of the first rod; all rods' share its relative error."""
-        value = self.poles[0].susceptibility
-        learned = self.design.learned.susceptibility_factor
-        if learned is not None and learned.value > 0.0:
-            return Estimate(value, value * learned.standard_uncertainty / learned.value)
-        return Estimate(value, value * self.design.susceptibility_uncertainty)
-
-    def _conductivity(self) -> Estimate:
-        value = self.poles[0].conductivity
-        return Estimate(value, value * self.design.conductivity_uncertainty)
 
     def outputs_at(self, x: FloatArray) -> FloatArray:
         """Return the outputs, in the order of OUTPUTS and in SI units, for values of the inputs."""

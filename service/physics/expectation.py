@@ -8,7 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.physics.caution import Caution
-from service.physics.coil_model import OUTPUTS, CoilModel, Input, Source
+from service.physics.coil_inputs import Input, Source
+from service.physics.coil_model import OUTPUTS, CoilModel
 from service.physics.design import Design
 from service.physics.lay import Lay
 from service.physics.resistance import BREAKING_STRAIN
