@@ -89,7 +89,7 @@ def to_design(body: RecipeBody, learned: Learned | None = None) -> Design:
         temperature=conditions.temperature_c,
         test_frequency=conditions.test_frequency_hz,
         lead_resistance=Estimate(leads, _LEAD_UNCERTAINTY * leads) if leads else NOTHING,
-        string=_string(body) if body.poles is not None else None,
+        string=_string(body),
         gap_flux_density=gap,
         gap_height=None if height is None else height * MILLI,
         learned=learned or Learned(),
@@ -329,8 +329,13 @@ def _gap_flux_density(body: RecipeBody) -> Estimate | None:
     return None if value is None else Estimate(value, _GAP_FLUX_UNCERTAINTY * value)
 
 
-def _string(body: RecipeBody) -> VibratingString:
-    part = body.string or StringPart()
+def _string(body: RecipeBody) -> VibratingString | None:
+    """The usual string over rods; none for a coil that has neither."""
+    part = body.string
+    if part is None:
+        if body.poles is None:
+            return None
+        part = StringPart()
     if part.amplitude_mm + part.diameter_mm / 2.0 >= part.distance_mm:
         raise InvalidValue(
             f"A string of {part.diameter_mm:g} mm that swings {part.amplitude_mm:g} mm strikes a "

@@ -117,6 +117,43 @@ def test_a_string_without_iron_gives_no_output_and_says_why() -> None:
     assert "no-output" in [warning.code for warning in silent.warnings]
 
 
+def test_a_string_over_a_coil_without_magnets_is_told() -> None:
+    air = predict(changed(poles=None, string={}))
+    assert air.output_mv.value == air.pole_flux_density_t.value == 0.0
+    assert "no-output" in [warning.code for warning in air.warnings]
+    assert "no-output" not in [warning.code for warning in predict(changed(poles=None)).warnings]
+
+
+def test_steel_rods_need_a_bar_magnet_for_an_output() -> None:
+    poles = {**EXAMPLE["poles"], "material": "steel"}
+    bar = {"length_mm": 60.0, "width_mm": 12.5, "thickness_mm": 3.2, "material": "ferrite C5"}
+    with_bar = predict(changed(poles=poles, magnet_bar=bar))
+    assert with_bar.output_mv.value > 0.0
+    assert predict(changed(poles=poles)).output_mv.value == 0.0
+    # Steel adds more inductance and more loss than magnets of low recoil permeability.
+    magnets = predict(PICKUP)
+    assert with_bar.inductance_h.value > 1.1 * magnets.inductance_h.value
+    effective = [p.inductance_h.value / p.quality_factor.value for p in (with_bar, magnets)]
+    assert effective[0] > effective[1]
+
+
+def test_a_core_and_a_closed_former_work_against_each_other() -> None:
+    core = {"diameter_mm": 25.0, "length_mm": 20.0, "material": "steel"}
+    bare = {**copy.deepcopy(VOICE_COIL_EXAMPLE), "former_material": "paper"}
+    plain = predict(RecipeBody.model_validate(bare))
+    cored = predict(RecipeBody.model_validate({**bare, "core": core}))
+    closed = predict(RecipeBody.model_validate({**copy.deepcopy(VOICE_COIL_EXAMPLE), "core": core}))
+    slit = predict(
+        RecipeBody.model_validate(
+            {**copy.deepcopy(VOICE_COIL_EXAMPLE), "core": core, "former_slit": True}
+        )
+    )
+    assert cored.inductance_h.value > 1.1 * plain.inductance_h.value
+    assert closed.inductance_h.value < cored.inductance_h.value
+    assert closed.quality_factor.value < cored.quality_factor.value
+    assert slit.inductance_h.value == pytest.approx(cored.inductance_h.value)
+
+
 def test_asked_again_the_answer_is_known_within_a_millisecond() -> None:
     first = predict(PICKUP)
     start = perf_counter()
