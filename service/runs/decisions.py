@@ -48,7 +48,7 @@ def decide(
         if refusal is not None:
             raise WrongState(
                 f"This coil cannot be released. {refusal}",
-                pointer="/kind",
+                pointer="/decision",
                 value=str(move),
                 mend="Measure it again, or ask a lead for a concession, a regrade or a rework.",
             )

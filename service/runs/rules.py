@@ -250,7 +250,7 @@ def check_disposition(
     if move not in DISPOSITIONS:
         raise InvalidValue(
             f"“{move}” is not a decision about a coil.",
-            pointer="/kind",
+            pointer="/decision",
             value=str(move),
             mend=f"Choose one of: {', '.join(DISPOSITIONS)}.",
         )

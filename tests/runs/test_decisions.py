@@ -151,7 +151,7 @@ def test_a_decision_needs_a_reason_and_a_role(bench: Bench) -> None:
 
 def test_winding_and_measuring_are_no_decisions(bench: Bench) -> None:
     for move in (Move.START, Move.FINISH, Move.LOSE, Move.MEASURE):
-        assert refused(InvalidValue, bench, LEAD, move).pointer == "/kind"
+        assert refused(InvalidValue, bench, LEAD, move).pointer == "/decision"
 
 
 def test_a_later_find_takes_an_accepted_coil_back_and_both_decisions_stay(bench: Bench) -> None:

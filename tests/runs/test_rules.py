@@ -226,7 +226,7 @@ def test_a_decision_needs_a_reason(move: Move) -> None:
 def test_what_is_no_decision_is_refused(move: Move) -> None:
     with pytest.raises(InvalidValue) as refusal:
         check_disposition(move, cause=None, reason="x", regrades_to_itself=None)
-    assert refusal.value.pointer == "/kind"
+    assert refusal.value.pointer == "/decision"
 
 
 def test_scrap_has_a_cause_of_the_list() -> None:
