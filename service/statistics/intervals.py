@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 from numpy.typing import ArrayLike
-from scipy import integrate, optimize, special, stats
+from scipy import integrate, optimize, special
 
 from service.statistics.arguments import Floats, counts, number, share, whole
 
@@ -60,7 +60,7 @@ def tolerance_factor(count: float, content: float, confidence: float, sides: flo
         raise ValueError(f"sides: 1 or 2 needed: {sides!r}")
     if sides == 1:
         shift = float(special.ndtri(content)) * math.sqrt(n)
-        return float(stats.nct.ppf(confidence, n - 1, shift)) / math.sqrt(n)
+        return float(special.nctdtrit(n - 1, shift, confidence)) / math.sqrt(n)
     return _two_sided_factor(n, content, confidence)
 
 
@@ -110,11 +110,21 @@ def funnel_limits(rate: float, sizes: ArrayLike, confidence: float) -> tuple[Flo
 def _binomial_quantile(p: float, n: Floats, rate: float) -> Floats:
     if rate in (0.0, 1.0):
         return np.full_like(n, rate)
-    r = np.asarray(stats.binom.ppf(p, n, rate), dtype=np.float64)
-    cumulative = np.asarray(stats.binom.cdf(r, n, rate), dtype=np.float64)
-    # ppf gives the smallest r with P(R <= r) >= p; the method wants strictly more than p.
-    r = np.where(cumulative <= p, r + 1, r)
-    cumulative = np.asarray(stats.binom.cdf(r, n, rate), dtype=np.float64)
-    mass = np.asarray(stats.binom.pmf(r, n, rate), dtype=np.float64)
+    # bdtrik inverts the continuous extension: start a step below it and walk up.
+    r = np.maximum(0.0, np.floor(special.bdtrik(p, n, rate)) - 1)
+    sizes = n.astype(np.int64)
+    while True:
+        below = special.bdtr(r, sizes, rate) <= p
+        if not below.any():
+            break
+        r = np.where(below, r + 1, r)
+    cumulative = special.bdtr(r, sizes, rate)
+    mass = np.exp(
+        special.gammaln(n + 1)
+        - special.gammaln(r + 1)
+        - special.gammaln(n - r + 1)
+        + special.xlogy(r, rate)
+        + special.xlog1py(n - r, -rate)
+    )
     limits = (r - (cumulative - p) / mass) / n
-    return np.clip(limits, 0.0, 1.0)
+    return np.asarray(np.clip(limits, 0.0, 1.0), dtype=np.float64)
