@@ -79,18 +79,20 @@ class Answers:
     causes: list[Mapping[str, Any]]
     not_told_apart: list[list[str]]
     next_reading: str | None
+    process: str
     streams: list[StreamLine]
 
-    @property
-    def process_word(self) -> str:
-        """The third answer in the page's words."""
-        if any(stream.signal for stream in self.streams):
-            return "drift"
-        if not self.streams:
-            return "not watched"
-        if all(stream.points < BASELINE for stream in self.streams):
-            return "learning"
-        return "steady"
+
+def process_word(verdict: Verdict) -> str:
+    """The third answer in the page's words."""
+    streams = verdict.reasoning["process"]
+    if any(stream["signal"] for stream in streams):
+        return "drift"
+    if not streams:
+        return "not watched"
+    if all(stream["points"] < BASELINE for stream in streams):
+        return "learning"
+    return "steady"
 
 
 def answers_of(session: Session, verdict: Verdict) -> Answers:
@@ -108,6 +110,7 @@ def answers_of(session: Session, verdict: Verdict) -> Answers:
         agreement["causes"][:_LIKELY],
         agreement["not_told_apart"],
         agreement["next_reading"],
+        process_word(verdict),
         [_stream(session, one) for one in reasoning["process"]],
     )
 

@@ -42,6 +42,7 @@ def _environment() -> Environment:
         significant=numbers.shown_significant,
         turns=numbers.shown_turns,
         quantity=numbers.shown_quantity,
+        uncertain=numbers.shown_uncertain,
         percent=numbers.shown_percent,
         editable=editable,
         mend=mend,

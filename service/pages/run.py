@@ -11,6 +11,7 @@ from sqlalchemy.orm import Session
 
 from service.bench import acts as bench
 from service.bench.models import Verdict
+from service.pages.answers import process_word
 from service.pages.floor import MachineLine, machine_lines
 from service.pages.forms import Entered, Form, FormWork
 from service.pages.history import folds_of, history_of, measurements_of
@@ -90,6 +91,7 @@ def run_page(
         attempt=attempt,
         fold=folds.get(attempt.id) if attempt else None,
         verdict=verdict,
+        process=process_word(verdict) if verdict else None,
         history=history_of(run, measurements, folds),
         forms=forms,
         can=_possible(run, actor),
