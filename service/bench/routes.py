@@ -129,6 +129,9 @@ def dispose(
         reason=body.reason or "It conforms.",
         regrade_recipe_id=body.regrade_recipe_id,
         conformity=verdict.conformity if verdict else None,
+        judged_at=acts.measurement_of(work, verdict.measurement_id).measured_at
+        if verdict
+        else None,
         now=now,
     )
     response.headers["Location"] = f"/api/v1/runs/{run.serial}"

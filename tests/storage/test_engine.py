@@ -8,6 +8,7 @@ from pathlib import Path
 import pytest
 import sqlalchemy as sa
 import sqlalchemy.exc
+from sqlalchemy.dialects import sqlite
 
 from service.errors import SetupError
 from service.people.models import Person
@@ -102,10 +103,10 @@ def test_impossible_numbers_are_refused_by_the_database_itself(
         "version": 1,
     }
     with engine.connect() as connection, pytest.raises(sqlalchemy.exc.IntegrityError):
-        connection.execute(sa.insert(Machine.__table__), machine)
+        connection.execute(sa.insert(Machine), machine)
     engine.dispose()
 
 
 def test_a_time_without_a_zone_is_refused() -> None:
     with pytest.raises(ValueError, match="without a zone"):
-        Utc().process_bind_param(datetime(2026, 1, 1), sa.dialects.sqlite.dialect())  # noqa: DTZ001 - the point
+        Utc().process_bind_param(datetime(2026, 1, 1), sqlite.dialect())  # noqa: DTZ001 - the point

@@ -77,7 +77,7 @@ def test_a_body_over_the_limit_is_refused_even_without_a_stated_length(web: Test
         for _ in range(20):
             yield b"x" * 1000
 
-    answer = web.post("/notes", content=chunks(), headers={"content-type": "application/json"})  # type: ignore[arg-type]
+    answer = web.post("/notes", content=chunks(), headers={"content-type": "application/json"})
     assert answer.status_code == 413
     assert problem(answer)["mend"]
 
