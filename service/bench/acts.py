@@ -209,7 +209,8 @@ def _process_word(states: list[ProcessState]) -> str:
         return "not watched"
     if any(state.signal for state in states):
         return "signal"
-    return "quiet"
+    # Ten coils set a stream's own centre; before that nothing can be said of a drift.
+    return "learning" if any(state.learning for state in states) else "quiet"
 
 
 def _plain(state: ProcessState) -> dict[str, Any]:
@@ -219,6 +220,7 @@ def _plain(state: ProcessState) -> dict[str, Any]:
         "points": state.points,
         "standardised_difference": state.standardised_difference,
         "ewma": state.ewma,
+        "learning": state.learning,
         "signal": state.signal,
     }
 

@@ -271,6 +271,8 @@ def _next_reading(names: Sequence[str], groups: tuple[tuple[str, ...], ...]) -> 
         return None
     if "inductance" not in names:
         return "Measure the inductance as well: it tells turns and magnets from wire."
-    if "quality_factor" not in names:
+    if "shorted turns" in groups[0] and "quality_factor" not in names:
         return "Measure Q at the test frequency as well: it tells a short from missing turns."
-    return "Measure the coil again after 30 minutes, and a metre of its spool."
+    if "temperature not settled" in groups[0]:
+        return "Measure the coil again after 30 minutes with four wires, then a metre of its spool."
+    return "Check the likeliest cause first: these readings alone cannot tell more."

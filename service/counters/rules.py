@@ -140,6 +140,9 @@ def _pulses_of_fall(
     state: FoldState, event: Event, machine: Machine
 ) -> tuple[int, Question | None]:
     step = event.count - state.count
+    if state.events == 0:
+        # The counter was set to zero between two coils, as it should be.
+        return (0 if event.kind == "start" else event.count), None
     for end in ROLLOVERS:
         if _NEAR_END * end <= state.count < end and event.count < (1 - _NEAR_END) * end:
             return step + end, None

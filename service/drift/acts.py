@@ -38,6 +38,7 @@ def _take(
         points=stream.points,
         standardised_difference=point.difference,
         ewma=point.ewma,
+        learning=stream.points <= rules.BASELINE,
         signal=point.signal,
     )
 

@@ -90,9 +90,13 @@ def place(unit: Unit) -> str:
 
 
 def is_good_first_time(unit: Unit) -> bool:
-    """Conforming at the first verdict, from the first winding, with no rework and no exception."""
+    """Conforming at the first verdict, from the first winding, with no rework and no exception.
+
+    A coil on hold is neither good nor bad until somebody decides, and is not counted as good.
+    """
     return (
         unit.first_conformity == "conforms"
+        and unit.state in ("accepted", "measured")
         and unit.windings == 1
         and not _NOT_FIRST_TIME & set(unit.dispositions)
     )
@@ -190,8 +194,9 @@ DEFINITIONS = {
     "without one, to the month in which its winding began.",
     "first-pass yield": "Coils that conformed at their first verdict, from their first winding, "
     "with no rework and no exception, over coils that had a first verdict (good parts over "
-    "inspected parts, ISO 22400-2). A corrected entry takes the place of the one it corrects; "
-    "measuring again until it passes is not a first pass.",
+    "inspected parts, ISO 22400-2). A coil on hold is not good until it is released. A "
+    "corrected entry takes the place of the one it corrects; measuring again until it passes is "
+    "not a first pass.",
     "rework": "Coils wound again or sent to rework or repair, over coils started.",
     "scrap": "Coils scrapped, over coils started; each with one cause.",
     "interval": "95 % interval of Wilson (1927): what counts of this size can tell.",

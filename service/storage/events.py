@@ -55,13 +55,14 @@ class Measured:
 
 @dataclass(frozen=True)
 class ProcessState:
-    """What a stream says after a point was added: quiet or a signal, and its numbers."""
+    """What a stream says after a point was added: learning, quiet or a signal, and its numbers."""
 
     stream: str
     characteristic: str
     points: int
     standardised_difference: float
     ewma: float
+    learning: bool
     signal: str | None
 
 

@@ -25,7 +25,7 @@ def test_a_good_coil_gets_three_answers_and_is_released(bench: Bench, lead: Hand
     verdict = bench.verdict(serial)
     assert verdict["conformity"] == "conforms"
     assert verdict["agreement"] == "as predicted"
-    assert verdict["process"] == "quiet"
+    assert verdict["process"] == "learning"
     assert verdict["first"] is True
     assert verdict["kernel_version"]
     answers = verdict["reasoning"]["conformity"]["answers"]

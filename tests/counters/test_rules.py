@@ -94,7 +94,7 @@ def test_a_restart_from_zero_adds_the_new_count_and_asks() -> None:
 def test_a_counter_that_rolls_over_counts_on(end: int) -> None:
     # Two-byte and four-byte counters wrap at 65,536 and 4,294,967,296: arithmetic.
     start = begin(1, 0, end - 100)
-    state = fold(start, totals(end - 1, 0, 50), MACHINE)
+    state = fold(start, totals(end - 50, end - 1, 0, 50), MACHINE)
     assert state.turns == 150
     assert state.questions == ()
 
@@ -122,6 +122,14 @@ def test_a_counter_set_back_during_a_coil_keeps_the_turns_before_and_asks() -> N
     state = fold(START, [*totals(500), Event(1, 2, "start", 0), Event(1, 3, "total", 40)], MACHINE)
     assert state.turns == 540
     assert kinds_of_question(state) == ["zeroed"]
+
+
+def test_a_counter_zeroed_between_two_coils_is_no_question() -> None:
+    stands = begin(boot=1, sequence=9, count=7600)
+    with_start = fold(stands, [Event(1, 10, "start", 0), Event(1, 11, "total", 400)], MACHINE)
+    without = fold(stands, totals(400, 900, first=10), MACHINE)
+    assert (with_start.turns, with_start.questions) == (400, ())
+    assert (without.turns, without.questions) == (900, ())
 
 
 def test_turns_never_fall_below_zero() -> None:
