@@ -71,7 +71,9 @@ def _field_error(item: dict[str, Any]) -> dict[str, Any]:
     name = str(path[-1]) if path else "the body"
     entry: dict[str, Any] = {"detail": f"{name}: {message}.", "pointer": pointer or "/"}
     value = item.get("input")
-    if value is not None and not isinstance(value, dict | list | bytes):
+    # An answer may be logged, or stand on a shared screen.
+    is_secret = name.endswith("password")
+    if value is not None and not is_secret and not isinstance(value, dict | list | bytes):
         entry["value"] = shown_value(value)
     entry["mend"] = _MENDS.get(str(item["type"])) or message
     return entry

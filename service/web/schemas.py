@@ -15,7 +15,8 @@ from pydantic import (
 )
 
 
-def _no_nul(text: str) -> str:
+def no_nul(text: str) -> str:
+    """The text, which PostgreSQL must be able to store. Raises ValueError for a NUL."""
     if "\x00" in text:
         raise ValueError("a NUL character cannot be stored; leave it out")
     return text
@@ -39,14 +40,26 @@ Flag = StrictBool
 Name = Annotated[
     str,
     StringConstraints(strip_whitespace=True, min_length=1, max_length=120),
-    AfterValidator(_no_nul),
+    AfterValidator(no_nul),
 ]
 Note = Annotated[
     str,
     StringConstraints(strip_whitespace=True, min_length=1, max_length=1000),
-    AfterValidator(_no_nul),
+    AfterValidator(no_nul),
 ]
 Moment = AwareDatetime
 Json = dict[str, Any]
 
-__all__ = ["Body", "Flag", "Json", "Moment", "Name", "Note", "Number", "View", "Whole", "datetime"]
+__all__ = [
+    "Body",
+    "Flag",
+    "Json",
+    "Moment",
+    "Name",
+    "Note",
+    "Number",
+    "View",
+    "Whole",
+    "datetime",
+    "no_nul",
+]

@@ -117,3 +117,9 @@ def test_a_page_gets_the_same_words_as_a_page(web: TestClient) -> None:
     answer = web.get("/lead", headers={"accept": "text/html"})
     assert answer.status_code == 401
     assert answer.text == "Nobody is signed in."
+
+
+def test_a_refusal_does_not_repeat_a_password(web: TestClient) -> None:
+    answer = web.post("/notes", json={"name": "x", "password": "an invented secret"})
+    assert problem(answer)["pointer"] == "/password"
+    assert "an invented secret" not in answer.text
