@@ -1,5 +1,6 @@
 """Puts the service together: database, routes, who hears what, limits around it all."""
 
+import threading
 from collections.abc import AsyncIterator
 from contextlib import asynccontextmanager
 from datetime import UTC, datetime
@@ -24,6 +25,8 @@ from service.pages.install import error_page, install, wants_page
 from service.people.acts import identify_person
 from service.people.cookies import cookie_name
 from service.people.routes import router as people_router
+from service.recipes.body import EXAMPLE, RecipeBody
+from service.recipes.prediction import predict
 from service.recipes.routes import router as recipes_router
 from service.reports.routes import router as reports_router
 from service.runs.routes import router as runs_router
@@ -99,6 +102,8 @@ def create_app(settings: Settings) -> FastAPI:
         app.state.gate = Gate(database)
         app.state.writer = GroupWriter(database, ingest)
         app.state.live = LiveHub(database)
+        # The kernel's libraries load when first used: here, beside the first requests.
+        threading.Thread(target=_warm_up, name="warm-up", daemon=True).start()
         yield
         app.state.live.close()
         await run_in_threadpool(app.state.writer.close)
@@ -125,6 +130,10 @@ def create_app(settings: Settings) -> FastAPI:
     )
     app.add_middleware(SecurityHeaders)
     return app
+
+
+def _warm_up() -> None:
+    predict(RecipeBody.model_validate(EXAMPLE))
 
 
 async def identify(request: Request) -> Actor | None:

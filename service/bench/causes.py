@@ -11,8 +11,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+import scipy
 from numpy.typing import NDArray
-from scipy import special
 
 FloatArray = NDArray[np.float64]
 
@@ -233,8 +233,8 @@ def _fit(
         - 0.5 * (cause.size / cause.spread) ** 2
     )
     if cause.one_sided:
-        evidence += float(special.log_ndtr(size * math.sqrt(precision)))
-        evidence -= float(special.log_ndtr(cause.size / cause.spread))
+        evidence += float(scipy.special.log_ndtr(size * math.sqrt(precision)))
+        evidence -= float(scipy.special.log_ndtr(cause.size / cause.spread))
         size = max(0.0, size)
     return evidence, size
 

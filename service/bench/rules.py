@@ -9,8 +9,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+import scipy
 from numpy.typing import NDArray
-from scipy import special
 
 from service.bench.reading import Measured
 from service.errors import ConfirmationNeeded
@@ -132,7 +132,7 @@ def agreement(
     relative = covariance / np.outer(expected, expected) + np.diag((u / values) ** 2)
     spread = np.sqrt(np.diag(relative))
     distance = float(logs @ np.linalg.solve(relative, logs))
-    probability = float(special.chdtrc(len(names), distance))
+    probability = float(scipy.special.chdtrc(len(names), distance))
     differences = tuple(
         Difference(
             name,

@@ -2,7 +2,7 @@
 
 import math
 
-from scipy.special import elliprd
+import scipy
 
 from service.physics.arguments import non_negative, positive
 from service.physics.constants import MAGNETIC_CONSTANT
@@ -43,7 +43,13 @@ def mutual_inductance_of_circles(radius_a: float, radius_b: float, distance: flo
     complement = 4.0 * (near / total) * (far / total)
     ratio = (a / total) * (b / total)
     return float(
-        16.0 / 3.0 * MAGNETIC_CONSTANT * ratio * ratio * total * elliprd(0.0, complement, 1.0)
+        16.0
+        / 3.0
+        * MAGNETIC_CONSTANT
+        * ratio
+        * ratio
+        * total
+        * scipy.special.elliprd(0.0, complement, 1.0)
     )
 
 
@@ -98,8 +104,8 @@ def _by_elliptic_integrals(shape: float) -> float:
     square = complementary * complementary
     # D = (K - E)/k2 and B = K - D in Carlson's form: both stay near pi/4 for a long solenoid,
     # where the classical combination of K and E would cancel.
-    d = elliprd(0.0, square, 1.0) / 3.0
-    b = square * elliprd(0.0, 1.0, square) / 3.0
+    d = scipy.special.elliprd(0.0, square, 1.0) / 3.0
+    b = square * scipy.special.elliprd(0.0, 1.0, square) / 3.0
     return float(4.0 / (3.0 * math.pi * complementary) * (2.0 * square * d + b - modulus))
 
 

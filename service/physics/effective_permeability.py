@@ -3,7 +3,7 @@
 import math
 
 import numpy as np
-from scipy.special import jve
+import scipy
 
 from service.physics.arguments import non_negative, positive
 from service.physics.constants import MAGNETIC_CONSTANT
@@ -38,7 +38,12 @@ def effective_permeability(
     if argument == 0.0:
         return complex(permeability)
     # The scaled functions share their scale, so their quotient holds for any size.
-    return complex(permeability * 2.0 * jve(1, argument) / (argument * jve(0, argument)))
+    return complex(
+        permeability
+        * 2.0
+        * scipy.special.jve(1, argument)
+        / (argument * scipy.special.jve(0, argument))
+    )
 
 
 def crosswise_susceptibility(susceptibility: float, diffusion: float, harmonic: int = 1) -> complex:
@@ -56,7 +61,7 @@ def crosswise_susceptibility(susceptibility: float, diffusion: float, harmonic: 
     argument = np.sqrt(-1j * diffusion * permeability)
     if abs(argument) < 1e-8:
         return complex(2.0 * susceptibility / (2.0 + susceptibility))
-    before, here = jve(harmonic - 1, argument), jve(harmonic, argument)
+    before, here = scipy.special.jve(harmonic - 1, argument), scipy.special.jve(harmonic, argument)
     # x J_m' = x J_(m-1) - m J_m.
     ratio = permeability * harmonic * here / (argument * before - harmonic * here)
     return complex(2.0 * (ratio - 1.0) / (ratio + 1.0))

@@ -5,8 +5,8 @@ from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
+import scipy
 from numpy.typing import NDArray
-from scipy.ndimage import maximum_filter1d
 
 from service.physics.arguments import positive, whole
 from service.physics.caution import Caution
@@ -165,7 +165,7 @@ def scatter_lay(
         packing = packing_factor(advance, scatter.wander / wire, scatter.tension / limit)
     elif not 0.0 < positive("packing", packing) <= HEXAGONAL_PACKING:
         raise ValueError(f"packing must not exceed {HEXAGONAL_PACKING:.4f}, got {packing!r}")
-    gap = np.maximum(maximum_filter1d(advance, TURNS_PER_STEP) - 1.0, 0.0) * wire
+    gap = np.maximum(scipy.ndimage.maximum_filter1d(advance, TURNS_PER_STEP) - 1.0, 0.0) * wire
     strayed = scatter.wander * rng.standard_normal(count) + gap * (rng.random(count) - 0.5)
     places = _fold(guide + strayed, travel) + wire / 2.0
     section_per_turn = math.pi / 4.0 * wire * wire / packing

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Final
 
-from scipy.special import elliprd
+import scipy
 
 from service.physics.arguments import celsius, finite, non_negative, positive
 from service.physics.circles import nagaoka_coefficient
@@ -94,7 +94,7 @@ def fluxmetric_factor(length_over_diameter: float) -> float:
     if gamma >= _LONG_ROD:
         return -_hypergeometric_minus_one(0.5, gamma / 2.0)
     complementary = gamma / math.hypot(gamma, 2.0)
-    share = elliprd(0.0, complementary * complementary, 1.0) / 3.0
+    share = scipy.special.elliprd(0.0, complementary * complementary, 1.0) / 3.0
     return float(1.0 - 4.0 / math.pi * complementary * share)
 
 

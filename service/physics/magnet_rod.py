@@ -12,7 +12,7 @@ from functools import lru_cache
 from typing import Final
 
 import numpy as np
-from scipy.linalg import cho_factor, cho_solve
+import scipy
 
 from service.physics.demagnetisation import DemagnetisationCurve
 from service.physics.gauss import gauss_legendre
@@ -85,7 +85,9 @@ class MagnetRod:
         for _ in range(_STEPS):
             if size <= enough:
                 return flux
-            step = cho_solve(cho_factor(self._tangent(curve, slope)), -residual)
+            step = scipy.linalg.cho_solve(
+                scipy.linalg.cho_factor(self._tangent(curve, slope)), -residual
+            )
             share = 1.0
             while True:
                 moved = flux + share * step

@@ -8,7 +8,7 @@ import math
 from typing import Final
 
 import numpy as np
-from scipy.special import ellipkm1
+import scipy
 
 from service.physics.gauss import gauss_legendre
 from service.physics.rod_mesh import ORDER, Floats, RodMesh, shape_slopes, shape_values
@@ -29,7 +29,9 @@ def ring_potential(radius_a: Floats, radius_b: Floats, height: Floats) -> Floats
     """
     square = height * height
     far = (radius_a + radius_b) ** 2 + square
-    potential: Floats = ellipkm1(((radius_a - radius_b) ** 2 + square) / far) / np.sqrt(far)
+    potential: Floats = scipy.special.ellipkm1(
+        ((radius_a - radius_b) ** 2 + square) / far
+    ) / np.sqrt(far)
     return potential / (2.0 * math.pi**2)
 
 

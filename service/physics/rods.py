@@ -18,7 +18,7 @@ from typing import Final
 
 import numpy as np
 import numpy.typing as npt
-from scipy.linalg import eigh
+import scipy
 
 from service.physics.rod_charges import charge_interaction, flux_at
 from service.physics.rod_mesh import Floats, RodMesh, RodShape
@@ -41,7 +41,7 @@ class RodModes:
     def __init__(self, shape: RodShape) -> None:
         self.mesh = RodMesh(shape)
         volume_form = self._volume_form()
-        factors, shapes = eigh(
+        factors, shapes = scipy.linalg.eigh(
             charge_interaction(self.mesh), volume_form, driver="gvd", check_finite=False
         )
         self.factors: Floats = np.clip(factors, 0.0, 1.0)
@@ -58,8 +58,8 @@ class RodModes:
         radial_mass = mesh.radial.mass_over_twice_x()
         radial_stiffness = 2.0 * mesh.radial.stiffness()[1:, 1:]
         # Modes of the interior with psi = 0 on the surface: products of these.
-        squares, across = eigh(radial_stiffness[:-1, :-1], radial_mass[:-1, :-1])
-        heights, along = eigh(axial_stiffness[1:-1, 1:-1], axial_mass[1:-1, 1:-1])
+        squares, across = scipy.linalg.eigh(radial_stiffness[:-1, :-1], radial_mass[:-1, :-1])
+        heights, along = scipy.linalg.eigh(axial_stiffness[1:-1, 1:-1], axial_mass[1:-1, 1:-1])
         self._interior: Floats = (squares[:, None] + heights).ravel()
 
         def to_interior(matrix_radial: Floats, matrix_axial: Floats) -> Floats:

@@ -6,8 +6,8 @@ from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
+import scipy
 from numpy.typing import ArrayLike, NDArray
-from scipy.special import ndtr
 
 from service.physics.arguments import finite, non_negative, whole
 
@@ -198,7 +198,7 @@ def conformance_probability(
         above = float(np.float64(high - y) / u)
     if below > 0.0:  # both limits above the estimate: take the far tails, not 1 minus 1
         below, above = -above, -below
-    return float(ndtr(above) - ndtr(below))
+    return float(scipy.special.ndtr(above) - scipy.special.ndtr(below))
 
 
 def _vector(name: str, values: ArrayLike) -> FloatArray:

@@ -7,8 +7,8 @@ from types import MappingProxyType
 from typing import Final
 
 import numpy as np
+import scipy
 from numpy.typing import NDArray
-from scipy.linalg import solve, toeplitz
 
 from service.physics.arguments import non_negative, positive
 from service.physics.circles import mutual_inductance_of_circles, solenoid_inductance
@@ -137,7 +137,7 @@ def reflected_impedance(
     resistance = rho * 2.0 * math.pi * radius / (thickness * length / _BANDS)
     impedance = resistance * np.eye(_BANDS) + 1j * omega * enhancement * inductance
     driven = n * enhancement * coupling
-    return complex(omega * omega * (driven @ solve(impedance, driven, assume_a="sym")))
+    return complex(omega * omega * (driven @ scipy.linalg.solve(impedance, driven, assume_a="sym")))
 
 
 @lru_cache(maxsize=32)
@@ -162,4 +162,4 @@ def _bands(section: WindingSection, radius: float, length: float) -> tuple[Float
             for m in middles
         ]
     )
-    return toeplitz(row), coupling
+    return scipy.linalg.toeplitz(row), coupling

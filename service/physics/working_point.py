@@ -11,7 +11,7 @@ from typing import Final
 
 import numpy as np
 import numpy.typing as npt
-from scipy.optimize import brentq
+import scipy
 
 from service.physics.arguments import non_negative
 from service.physics.bar_magnet import BarMagnet
@@ -287,5 +287,5 @@ def _on_load_line(curve: DemagnetisationCurve, factor: float) -> float:
         field = float(curve.field(np.array([flux]))[0][0])
         return field + factor * (flux - field)
 
-    flux = float(brentq(apart, -full, 2.0 * full))
+    flux = float(scipy.optimize.brentq(apart, -full, 2.0 * full))
     return flux - float(curve.field(np.array([flux]))[0][0])

@@ -4,8 +4,8 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+import scipy
 from numpy.typing import ArrayLike
-from scipy import special
 
 from service.statistics.arguments import Floats, counts, floats
 
@@ -65,8 +65,10 @@ def _poisson_change(array: Floats) -> ChangePoint:
     before, left, right = _sides(array)
     after = len(array) - before
     overall = float(array.mean())
-    likelihood = before * special.xlogy(left, left) + after * special.xlogy(right, right)
-    ratio = 2 * (likelihood - len(array) * float(special.xlogy(overall, overall)))
+    likelihood = before * scipy.special.xlogy(left, left) + after * scipy.special.xlogy(
+        right, right
+    )
+    ratio = 2 * (likelihood - len(array) * float(scipy.special.xlogy(overall, overall)))
     split = int(np.argmax(ratio))
     return ChangePoint(
         split + 1, float(left[split]), float(right[split]), max(0.0, float(ratio[split]))

@@ -10,8 +10,8 @@ from functools import lru_cache
 from typing import Literal
 
 import numpy as np
+import scipy
 from numpy.typing import ArrayLike
-from scipy import integrate, special
 
 from service.statistics.arguments import Floats, floats
 
@@ -89,7 +89,7 @@ def _anova(array: Floats) -> tuple[float, float, float]:
     ms_interaction, ms_error = interaction / crossed_freedom, error / error_freedom
     significant = (
         ms_error > 0
-        and float(special.fdtrc(crossed_freedom, error_freedom, ms_interaction / ms_error))
+        and float(scipy.special.fdtrc(crossed_freedom, error_freedom, ms_interaction / ms_error))
         < POOLING_LEVEL
     )
     if significant:
@@ -140,10 +140,10 @@ def _range_moments(size: int) -> tuple[float, float]:
 
     def survival(width: float) -> float:
         def density(low: float) -> float:
-            inside = float(special.ndtr(low + width) - special.ndtr(low))
+            inside = float(scipy.special.ndtr(low + width) - scipy.special.ndtr(low))
             return float(inside ** (size - 1) * math.exp(-low * low / 2) / math.sqrt(2 * math.pi))
 
-        value, _ = integrate.quad(density, -8.5, 8.5, epsabs=1e-11, limit=200)
+        value, _ = scipy.integrate.quad(density, -8.5, 8.5, epsabs=1e-11, limit=200)
         return 1 - size * float(value)
 
     nodes, weights = np.polynomial.legendre.leggauss(80)

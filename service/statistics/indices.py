@@ -7,8 +7,8 @@ the total spread and claim nothing. Whether a process is stable is for the contr
 import math
 from dataclasses import dataclass
 
+import scipy
 from numpy.typing import ArrayLike
-from scipy import special
 
 from service.statistics.arguments import floats, limits, number, positive, share, whole
 from service.statistics.charts import D2_OF_TWO
@@ -109,7 +109,7 @@ def _indices(
 
 def _cpk_interval(cpk: float, count: int, confidence: float) -> Interval:
     """Normal form: Cpk ± z sqrt(1/(9n) + Cpk²/(2(n-1))) (Bissell, Applied Statistics 39, 1990)."""
-    z = float(special.ndtri((1 + confidence) / 2))
+    z = float(scipy.special.ndtri((1 + confidence) / 2))
     reach = z * math.sqrt(1 / (9 * count) + cpk**2 / (2 * (count - 1)))
     return cpk - reach, cpk + reach
 
@@ -118,6 +118,6 @@ def _pp_interval(pp: float, count: int, confidence: float) -> Interval:
     """Exact under normality, from the chi-square distribution of the variance."""
     freedom = count - 1
     tail = (1 - confidence) / 2
-    low = float(special.chdtri(freedom, 1 - tail))
-    high = float(special.chdtri(freedom, tail))
+    low = float(scipy.special.chdtri(freedom, 1 - tail))
+    high = float(scipy.special.chdtri(freedom, tail))
     return pp * math.sqrt(low / freedom), pp * math.sqrt(high / freedom)

@@ -3,8 +3,8 @@
 import math
 
 import numpy as np
+import scipy
 from numpy.typing import ArrayLike
-from scipy import integrate, optimize, special
 
 from service.statistics.arguments import Floats, counts, number, share, whole
 
@@ -25,7 +25,7 @@ def wilson_interval(
     Keeps its coverage near the stated confidence from small numbers on; never leaves 0..1.
     """
     good, total = _trials(successes, trials)
-    z = float(special.ndtri((1 + share("confidence", confidence)) / 2))
+    z = float(scipy.special.ndtri((1 + share("confidence", confidence)) / 2))
     p = good / total
     centre = (p + z * z / (2 * total)) / (1 + z * z / total)
     reach = z * math.sqrt(p * (1 - p) / total + z * z / (4 * total**2)) / (1 + z * z / total)
@@ -43,8 +43,10 @@ def exact_interval(
     """
     good, total = _trials(successes, trials)
     tail = (1 - share("confidence", confidence)) / 2
-    low = 0.0 if good == 0 else float(special.betaincinv(good, total - good + 1, tail))
-    high = 1.0 if good == total else float(special.betaincinv(good + 1, total - good, 1 - tail))
+    low = 0.0 if good == 0 else float(scipy.special.betaincinv(good, total - good + 1, tail))
+    high = (
+        1.0 if good == total else float(scipy.special.betaincinv(good + 1, total - good, 1 - tail))
+    )
     return low, high
 
 
@@ -59,8 +61,8 @@ def tolerance_factor(count: float, content: float, confidence: float, sides: flo
     if sides not in (1, 2):
         raise ValueError(f"sides: 1 or 2 needed: {sides!r}")
     if sides == 1:
-        shift = float(special.ndtri(content)) * math.sqrt(n)
-        return float(special.nctdtrit(n - 1, shift, confidence)) / math.sqrt(n)
+        shift = float(scipy.special.ndtri(content)) * math.sqrt(n)
+        return float(scipy.special.nctdtrit(n - 1, shift, confidence)) / math.sqrt(n)
     return _two_sided_factor(n, content, confidence)
 
 
@@ -70,26 +72,28 @@ def _two_sided_factor(n: int, content: float, confidence: float) -> float:
     def half_width(offset: float) -> float:
         """r with P(offset - r < Z < offset + r) = content."""
         # chi-square with non-centrality offset^2 is the distribution of (Z + offset)^2
-        return math.sqrt(float(special.chndtrix(content, 1.0, offset * offset)))
+        return math.sqrt(float(scipy.special.chndtrix(content, 1.0, offset * offset)))
 
     def covered(k: float) -> float:
         def density(offset: float) -> float:
             needed = half_width(offset)
-            probability = float(special.chdtrc(freedom, freedom * (needed / k) ** 2))
+            probability = float(scipy.special.chdtrc(freedom, freedom * (needed / k) ** 2))
             return probability * math.exp(-n * offset * offset / 2)
 
-        value, _ = integrate.quad(
+        value, _ = scipy.integrate.quad(
             density, 0.0, 9.0 / math.sqrt(n), epsabs=1e-12, epsrel=1e-10, limit=200
         )
         return 2 * math.sqrt(n / (2 * math.pi)) * float(value)
 
     # Howe's approximation (JASA 64, 1969) is within some percent: a bracket around it.
-    quantile = float(special.chdtri(freedom, confidence))
-    guess = float(special.ndtri((1 + content) / 2)) * math.sqrt((1 + 1 / n) * freedom / quantile)
+    quantile = float(scipy.special.chdtri(freedom, confidence))
+    guess = float(scipy.special.ndtri((1 + content) / 2)) * math.sqrt(
+        (1 + 1 / n) * freedom / quantile
+    )
     low, high = guess * 0.5, guess * 1.5
     while covered(high) < confidence:
         high *= 2
-    return float(optimize.brentq(lambda k: covered(k) - confidence, low, high, xtol=1e-10))
+    return float(scipy.optimize.brentq(lambda k: covered(k) - confidence, low, high, xtol=1e-10))
 
 
 def funnel_limits(rate: float, sizes: ArrayLike, confidence: float) -> tuple[Floats, Floats]:
@@ -111,20 +115,20 @@ def _binomial_quantile(p: float, n: Floats, rate: float) -> Floats:
     if rate in (0.0, 1.0):
         return np.full_like(n, rate)
     # bdtrik inverts the continuous extension: start a step below it and walk up.
-    r = np.maximum(0.0, np.floor(special.bdtrik(p, n, rate)) - 1)
+    r = np.maximum(0.0, np.floor(scipy.special.bdtrik(p, n, rate)) - 1)
     sizes = n.astype(np.int64)
     while True:
-        below = special.bdtr(r, sizes, rate) <= p
+        below = scipy.special.bdtr(r, sizes, rate) <= p
         if not below.any():
             break
         r = np.where(below, r + 1, r)
-    cumulative = special.bdtr(r, sizes, rate)
+    cumulative = scipy.special.bdtr(r, sizes, rate)
     mass = np.exp(
-        special.gammaln(n + 1)
-        - special.gammaln(r + 1)
-        - special.gammaln(n - r + 1)
-        + special.xlogy(r, rate)
-        + special.xlog1py(n - r, -rate)
+        scipy.special.gammaln(n + 1)
+        - scipy.special.gammaln(r + 1)
+        - scipy.special.gammaln(n - r + 1)
+        + scipy.special.xlogy(r, rate)
+        + scipy.special.xlog1py(n - r, -rate)
     )
     limits = (r - (cumulative - p) / mass) / n
     return np.asarray(np.clip(limits, 0.0, 1.0), dtype=np.float64)
