@@ -322,9 +322,9 @@ def told(body: Mapping[str, Any], kind: str) -> list[Told]:
     groups = []
     for group in groups_for(kind):
         facts = [
-            (field.label, _in_words(at(body, field.path), field))
+            (field.label, _in_words(value, field))
             for field in group.fields
-            if at(body, field.path) not in (None, False)
+            if (value := at(body, field.path)) is not None and value is not False
         ]
         if facts:
             groups.append(Told(group.title, facts))
