@@ -1,37 +1,42 @@
-"""What is done about people: add, change, sign in and out, and tell who somebody is."""
+"""What is done about people: add, change, set passwords, and sign in and out."""
 
-import hashlib
-import secrets
 import uuid
 from collections.abc import Sequence
 from datetime import datetime
+from typing import Any
 
 import sqlalchemy as sa
 from sqlalchemy.orm import Session
 from sqlalchemy.orm.attributes import flag_modified
 
-from service.errors import AlreadyThere, InvalidValue, NotFound, NotSignedIn, TooManyAttempts
+from service.errors import AlreadyThere, NotFound
 from service.people import rules
-from service.people.models import FailedSignIn, Person, PersonRole, SignIn
-from service.people.passwords import hash_password, needs_new_hash, verify
-from service.storage.engine import Database
+from service.people.models import Person, PersonRole
+from service.people.sign_ins import (
+    end_all_sign_ins,
+    end_sign_in,
+    forgive,
+    identify_person,
+    prove_own_password,
+    start_sign_in,
+)
 from service.storage.records import Actor, record
 from service.web.access import Role
 
-TOKEN_PREFIX = "cws_"  # noqa: S105 - a prefix, not a secret
+__all__ = [
+    "add_person",
+    "change_person",
+    "end_sign_in",
+    "identify_person",
+    "person_of",
+    "prove_own_password",
+    "set_password",
+    "shown_person",
+    "start_sign_in",
+]
 
-
-def _hash_token(token: str) -> str:
-    """SHA-256 suffices for 256 random bits."""
-    return hashlib.sha256(token.encode()).hexdigest()
-
-
-def find_by_name(session: Session, name: str) -> Person | None:
-    """The person of that name, whatever its case and Unicode form."""
-    wanted = rules.same_name(name)
-    rows = session.execute(sa.select(Person.id, Person.name))
-    found = next((row.id for row in rows if rules.same_name(row.name) == wanted), None)
-    return session.get(Person, found) if found else None
+_ROLES = [role.value for role in Role]
+_ADVISORY_LOCK = 727404  # queues on PostgreSQL the changes by which an owner may leave
 
 
 def add_person(
@@ -44,30 +49,40 @@ def add_person(
     now: datetime,
 ) -> Person:
     """A person who may sign in. Hash the password before the transaction: hashing is slow."""
-    if unknown := rules.unknown_roles([str(role) for role in roles], [str(role) for role in Role]):
-        raise InvalidValue(
-            f"There is no role “{unknown[0]}”.",
-            pointer="/roles",
-            value=unknown[0],
-            mend=f"Roles are {', '.join(Role)}.",
-        )
-    if find_by_name(session, name):
-        raise AlreadyThere(
-            f"There is somebody named “{name}” already.",
-            pointer="/name",
-            value=name,
-            mend="Add a second name or a letter.",
-        )
-    person = Person(name=" ".join(name.split()), password_hash=password_hash, created_at=now)
-    person.parts = [PersonRole(role=str(role)) for role in sorted(set(roles))]
+    kept = rules.check_name(name)
+    wanted = rules.check_roles(roles, _ROLES)
+    _refuse_same_name(session, kept)
+    person = Person(name=kept, password_hash=password_hash, created_at=now)
+    person.parts = [PersonRole(role=role) for role in wanted]
     session.add(person)
     session.flush()
-    after = {"name": person.name, "roles": person.roles}
+    after = {"name": kept, "roles": wanted}
     record(session, actor, "add person", "person", person.id, at=now, after=after)
     return person
 
 
+def _refuse_same_name(session: Session, name: str, own_id: uuid.UUID | None = None) -> None:
+    wanted = rules.same_name(name)
+    for row in session.execute(sa.select(Person.id, Person.name)):
+        if row.id != own_id and rules.same_name(row.name) == wanted:
+            raise AlreadyThere(
+                f"There is somebody named “{row.name}” already.",
+                pointer="/name",
+                value=name,
+                mend="Add a second name or a letter; names of who left stay taken.",
+            )
+
+
+def shown_person(session: Session, person_id: uuid.UUID) -> Person:
+    """The person, to be read only."""
+    person = session.get(Person, person_id)
+    if person is None:
+        raise NotFound("There is no such person.", value=str(person_id))
+    return person
+
+
 def person_of(session: Session, person_id: uuid.UUID) -> Person:
+    """The person, held until the end of the transaction."""
     person = session.get(Person, person_id, with_for_update=True)
     if person is None:
         raise NotFound("There is no such person.", value=str(person_id))
@@ -79,138 +94,65 @@ def change_person(
     actor: Actor,
     person: Person,
     *,
-    roles: Sequence[Role] | None,
+    roles: Sequence[Role | str] | None,
     active: bool | None,
     reason: str,
     now: datetime,
+    name: str | None = None,
 ) -> None:
-    """Change roles, or let somebody go: sign-ins end, and the name stays in the record."""
-    before = {"roles": person.roles, "active": person.active}
-    was_owner = person.active and Role.OWNER in person.roles
-    new_roles = sorted(set(person.roles if roles is None else [str(role) for role in roles]))
-    new_active = person.active if active is None else active
-    owners = session.scalar(
-        sa.select(sa.func.count())
-        .select_from(Person)
-        .join(PersonRole)
-        .where(Person.active, PersonRole.role == Role.OWNER.value)
-    )
-    rules.check_owner_remains(owners or 0, was_owner, new_active and Role.OWNER in new_roles)
-    kept = {part.role: part for part in person.parts}
-    person.parts = [kept.get(role) or PersonRole(role=role) for role in new_roles]
-    person.active = new_active
-    if not new_active:
+    """Change a name or roles, or let somebody go: sign-ins end, and the name stays in the record.
+
+    What is None stays. Raises WrongState where no owner would be left.
+    """
+    wanted: dict[str, Any] = {}
+    if name is not None:
+        wanted["name"] = rules.check_name(name)
+        _refuse_same_name(session, wanted["name"], person.id)
+    if roles is not None:
+        wanted["roles"] = rules.check_roles(roles, _ROLES)
+    if active is not None:
+        wanted["active"] = active
+    after = {field: value for field, value in wanted.items() if getattr(person, field) != value}
+    if not after:
+        return
+    before = {field: getattr(person, field) for field in after}
+    if not after.get("active", True) or Role.OWNER not in after.get("roles", [Role.OWNER]):
+        rules.check_owner_remains(_active_owners(session), person.id)
+    if "roles" in after:
+        kept = {part.role: part for part in person.parts}
+        person.parts = [kept.get(role) or PersonRole(role=role) for role in after["roles"]]
+    person.name = after.get("name", person.name)
+    person.active = after.get("active", person.active)
+    if not person.active:
         end_all_sign_ins(session, person.id, now)
-    after = {"roles": new_roles, "active": new_active}
+    # Where only roles moved the row itself is unchanged: its version must move all the same.
+    flag_modified(person, "active")
+    session.flush()
     record(
         session, actor, "change person", "person", person.id,
         at=now, before=before, after=after, reason=reason,
     )  # fmt: skip
-    # Where only roles moved the row itself is unchanged: its version must move all the same.
-    flag_modified(person, "active")
-    session.flush()
+
+
+def _active_owners(session: Session) -> set[uuid.UUID]:
+    """Asked one after the other, so that two owners cannot both leave as the last but one."""
+    if session.get_bind().dialect.name == "postgresql":
+        session.execute(sa.text("SELECT pg_advisory_xact_lock(:key)"), {"key": _ADVISORY_LOCK})
+    return set(
+        session.scalars(
+            sa.select(PersonRole.person_id)
+            .join(Person, Person.id == PersonRole.person_id)
+            .where(Person.active, PersonRole.role == Role.OWNER.value)
+        )
+    )
 
 
 def set_password(
     session: Session, actor: Actor, person: Person, *, password_hash: str, now: datetime
 ) -> None:
-    """Set a password made elsewhere; ends every sign-in of that person."""
+    """Set a password made elsewhere; ends every sign-in of that person, and any pause."""
     person.password_hash = password_hash
     end_all_sign_ins(session, person.id, now)
-    record(session, actor, "set password", "person", person.id, at=now)
+    forgive(session, person.name)
     session.flush()
-
-
-def end_all_sign_ins(session: Session, person_id: uuid.UUID, now: datetime) -> None:
-    session.execute(
-        sa.update(SignIn)
-        .where(SignIn.person_id == person_id, SignIn.ended_at.is_(None))
-        .values(ended_at=now)
-    )
-
-
-def start_sign_in(
-    database: Database, *, name: str, password: str, address: str, now: datetime
-) -> tuple[Person, str]:
-    """Sign somebody in: the person and a new token.
-
-    Has short transactions of its own, so that the slow check holds up no other writer. Raises
-    TooManyAttempts (also for the right password) and NotSignedIn.
-    """
-    wanted = rules.same_name(name)[:120]
-    with database.read() as session:
-        _check_attempts(session, wanted, address, now)
-        found = find_by_name(session, name)
-        person_id = found.id if found and found.active else None
-        password_hash = found.password_hash if found and found.active else None
-    fits = verify(password_hash, password)
-    rehashed = (
-        hash_password(password)
-        if fits and password_hash and needs_new_hash(password_hash)
-        else None
-    )
-    with database.write() as session:
-        if not fits or person_id is None:
-            session.add(FailedSignIn(name=wanted, address=address[:60], at=now))
-            session.commit()
-            raise NotSignedIn(
-                "Name and password do not belong together.",
-                mend="Check both; after some failures there is a pause of 15 minutes.",
-            )
-        person = person_of(session, person_id)
-        if rehashed:
-            person.password_hash = rehashed
-        session.execute(sa.delete(FailedSignIn).where(FailedSignIn.name == wanted))
-        token = TOKEN_PREFIX + secrets.token_urlsafe(32)
-        session.add(
-            SignIn(person_id=person.id, token_hash=_hash_token(token), started_at=now, seen_at=now)
-        )
-        who = Actor("person", person.id, person.name, frozenset(person.roles))
-        record(session, who, "sign in", "person", person.id, at=now)
-        session.commit()
-        return person, token
-
-
-def _check_attempts(session: Session, name: str, address: str, now: datetime) -> None:
-    recent = FailedSignIn.at > now - rules.ATTEMPT_WINDOW
-    count = sa.select(sa.func.count()).select_from(FailedSignIn)
-    of_name = session.scalar(count.where(FailedSignIn.name == name, recent)) or 0
-    of_address = session.scalar(count.where(FailedSignIn.address == address[:60], recent)) or 0
-    if rules.must_wait(of_name, of_address):
-        seconds = int(rules.ATTEMPT_WINDOW.total_seconds())
-        raise TooManyAttempts(
-            "There were too many failed attempts to sign in.",
-            mend="Wait a quarter of an hour; an owner can set a new password meanwhile.",
-            headers={"Retry-After": str(seconds)},
-        )
-
-
-def end_sign_in(session: Session, token: str, now: datetime) -> None:
-    session.execute(
-        sa.update(SignIn)
-        .where(SignIn.token_hash == _hash_token(token), SignIn.ended_at.is_(None))
-        .values(ended_at=now)
-    )
-
-
-def identify_person(database: Database, token: str, now: datetime) -> Actor | None:
-    """Who a token belongs to, while the sign-in lasts; its use is noted once a minute at most."""
-    with database.read() as session:
-        row = session.execute(
-            sa.select(SignIn, Person)
-            .join(Person, Person.id == SignIn.person_id)
-            .where(SignIn.token_hash == _hash_token(token), SignIn.ended_at.is_(None))
-        ).one_or_none()
-        if row is None:
-            return None
-        sign_in, person = row
-        if not person.active or rules.is_over(sign_in.started_at, sign_in.seen_at, now):
-            return None
-        actor = Actor("person", person.id, person.name, frozenset(person.roles))
-        stale = now - sign_in.seen_at > rules.SEEN_STEP
-        sign_in_id = sign_in.id
-    if stale:
-        with database.write() as session:
-            session.execute(sa.update(SignIn).where(SignIn.id == sign_in_id).values(seen_at=now))
-            session.commit()
-    return actor
+    record(session, actor, "set password", "person", person.id, at=now)

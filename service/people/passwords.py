@@ -1,6 +1,7 @@
 """Passwords: Argon2id by argon2-cffi, at most two hashes at a time."""
 
 import threading
+import unicodedata
 
 from argon2 import PasswordHasher
 from argon2.exceptions import InvalidHashError, VerificationError
@@ -15,20 +16,26 @@ _NOBODY = (
 )
 
 
+def _typed(password: str) -> bytes:
+    """One Unicode form, so that an accented letter is the same from every keyboard."""
+    return unicodedata.normalize("NFC", password).encode("utf-8", "surrogatepass")
+
+
 def hash_password(password: str) -> str:
     with _at_once:
-        return _hasher.hash(password)
+        return _hasher.hash(_typed(password))
 
 
 def verify(password_hash: str | None, password: str) -> bool:
     """Whether the password fits; as slow for a name that is not known."""
     with _at_once:
         try:
-            return _hasher.verify(password_hash or _NOBODY, password) and password_hash is not None
+            fits = _hasher.verify(password_hash or _NOBODY, _typed(password))
         except (VerificationError, InvalidHashError):
             return False
+    return fits and password_hash is not None
 
 
 def needs_new_hash(password_hash: str) -> bool:
-    """Whether the hash was made with weaker parameters than those of today."""
+    """Whether the hash was made with other parameters than those of today."""
     return _hasher.check_needs_rehash(password_hash)

@@ -9,11 +9,11 @@ from fastapi import APIRouter, Query, Request, Response
 from sqlalchemy.orm import Session
 from starlette.concurrency import run_in_threadpool
 
-from service.errors import InvalidValue, NotAllowed, NotSignedIn
+from service.errors import NotAllowed, NotSignedIn
 from service.people import acts
 from service.people.cookies import clear_cookie, cookie_name, set_cookie
 from service.people.models import Person
-from service.people.passwords import hash_password, verify
+from service.people.passwords import hash_password
 from service.people.rules import ABSOLUTE_LIMIT, check_password
 from service.people.schemas import (
     ActView,
@@ -28,10 +28,14 @@ from service.storage.engine import Database
 from service.storage.records import Act, Actor
 from service.web import access
 from service.web.edits import IfMatch, check_seen, tag
-from service.web.paging import PAGE_LIMIT
+from service.web.paging import Limit
 from service.web.unit import Now, Reading, UnitRoute, Work
 
 router = APIRouter(prefix="/api/v1", route_class=UnitRoute)
+
+SubjectWord = Annotated[
+    str | None, Query(max_length=60, pattern=r"^[^\x00]*$", description="Acts on this alone.")
+]
 
 
 def view(person: Person) -> PersonView:
@@ -50,6 +54,13 @@ def token_of(request: Request) -> str:
     return request.cookies.get(cookie_name(request.app.state.settings), "")
 
 
+def _keep_no_answer(request: Request) -> None:
+    """Let an Idempotency-Key go unheeded: with the answer a plain digest of the body is kept, and
+    from that a password could be guessed far faster than from its slow hash.
+    """
+    request.state.unit.key = None
+
+
 @router.post("/sign-ins", status_code=201, tags=["sign-in"])
 def sign_in(
     body: SignInBody, request: Request, response: Response, _actor: access.Open
@@ -63,7 +74,9 @@ def sign_in(
         password=body.password,
         address=client_address(request),
         now=now,
+        replaces=token_of(request),
     )
+    response.headers["Location"] = "/api/v1/sign-ins/current"
     set_cookie(response, request.app.state.settings, token)
     response.headers["Cache-Control"] = "no-store"
     return SignedInView(
@@ -102,6 +115,7 @@ async def add_person(
 ) -> PersonView:
     """Add somebody who may sign in."""
     check_password(body.password)
+    _keep_no_answer(request)
     password_hash = await run_in_threadpool(hash_password, body.password)
     session: Session = await request.state.unit.open()
     person = await run_in_threadpool(
@@ -118,7 +132,7 @@ async def add_person(
 def show_person(
     person_id: uuid.UUID, reading: Reading, response: Response, _actor: access.Inspector
 ) -> PersonView:
-    person = acts.person_of(reading, person_id)
+    person = acts.shown_person(reading, person_id)
     tag(response, person.version)
     return view(person)
 
@@ -133,11 +147,18 @@ def change_person(
     actor: access.Owner,
     if_match: IfMatch = None,
 ) -> PersonView:
-    """Change somebody's roles, or let them go. Nobody is deleted."""
+    """Change somebody's name or roles, or let them go. Nobody is deleted."""
     person = acts.person_of(work, person_id)
     check_seen(if_match, person.version)
     acts.change_person(
-        work, actor, person, roles=body.roles, active=body.active, reason=body.reason, now=now
+        work,
+        actor,
+        person,
+        name=body.name,
+        roles=body.roles,
+        active=body.active,
+        reason=body.reason,
+        now=now,
     )
     tag(response, person.version)
     return view(person)
@@ -147,23 +168,26 @@ def change_person(
 async def set_password(
     person_id: uuid.UUID, body: PasswordBody, request: Request, now: Now, actor: access.Anybody
 ) -> None:
-    """Set a new password: one's own with the present one, another's as an owner."""
+    """Set a new password: one's own with the present one, another's as an owner.
+
+    All sign-ins of that person end, one's own included.
+    """
     own = actor.id == person_id
     if not own and access.Role.OWNER not in actor.roles:
         raise NotAllowed("This is another person's password.", mend="Ask an owner.")
     check_password(body.new_password, "/new_password")
-    database: Database = request.app.state.database
+    _keep_no_answer(request)
 
     def prepared() -> str:
         if own:
-            with database.read() as session:
-                present = acts.person_of(session, person_id).password_hash
-            if not verify(present, body.present_password or ""):
-                raise InvalidValue(
-                    "The present password does not fit.",
-                    pointer="/present_password",
-                    mend="Type the password that you signed in with.",
-                )
+            acts.prove_own_password(
+                request.app.state.database,
+                name=actor.name,
+                password=body.present_password or "",
+                address=client_address(request),
+                now=now,
+                pointer="/present_password",
+            )
         return hash_password(body.new_password)
 
     password_hash = await run_in_threadpool(prepared)
@@ -179,12 +203,15 @@ async def set_password(
 @router.get("/acts", tags=["record"])
 def list_acts(
     reading: Reading,
+    request: Request,
     response: Response,
     _actor: access.Inspector,
-    subject_kind: Annotated[str | None, Query(max_length=60)] = None,
-    subject_id: Annotated[str | None, Query(max_length=60)] = None,
-    before: Annotated[int | None, Query(ge=1, description="Position to go on before.")] = None,
-    limit: Annotated[int, Query(ge=1, le=PAGE_LIMIT)] = 50,
+    subject_kind: SubjectWord = None,
+    subject_id: SubjectWord = None,
+    before: Annotated[
+        int | None, Query(ge=1, le=2**31 - 1, description="Position to go on before.")
+    ] = None,
+    limit: Limit = 50,
 ) -> list[ActView]:
     """The record of acts, newest first: who did what, when and why."""
     statement = sa.select(Act)
@@ -196,7 +223,6 @@ def list_acts(
         statement = statement.where(Act.position < before)
     rows = reading.scalars(statement.order_by(Act.position.desc()).limit(limit + 1)).all()
     if len(rows) > limit:
-        response.headers["Link"] = (
-            f'</api/v1/acts?before={rows[limit - 1].position}&limit={limit}>; rel="next"'
-        )
+        url = request.url.include_query_params(before=rows[limit - 1].position)
+        response.headers["Link"] = f'<{url.path}?{url.query}>; rel="next"'
     return [ActView.model_validate(row) for row in rows[:limit]]

@@ -4,13 +4,13 @@ import uuid
 from datetime import datetime
 from typing import Annotated, Any
 
-from pydantic import ConfigDict, Field, StringConstraints
+from pydantic import AfterValidator, ConfigDict, Field, StringConstraints
 
 from service.web.access import Role
-from service.web.schemas import Body, Flag, Name, Note, View
+from service.web.schemas import Body, Flag, Name, Note, View, no_nul
 
 Password = Annotated[str, StringConstraints(min_length=1, max_length=1000)]
-Roles = Annotated[list[Role], Field(max_length=len(Role))]
+Roles = Annotated[list[Role], Field(min_length=1, max_length=len(Role))]
 
 
 class SignInBody(Body):
@@ -18,7 +18,7 @@ class SignInBody(Body):
         json_schema_extra={"examples": [{"name": "Mira Voss", "password": "an invented password"}]}
     )
 
-    name: Annotated[str, StringConstraints(max_length=120)]
+    name: Annotated[str, StringConstraints(max_length=120), AfterValidator(no_nul)]
     password: Password
 
 
@@ -56,12 +56,29 @@ class PersonBody(Body):
 
 
 class PersonEdit(Body):
+    """What is left out stays."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [{"roles": ["operator", "lead"], "reason": "Leads from January on."}]
+        }
+    )
+
+    name: Name | None = None
     roles: Roles | None = None
     active: Flag | None = None
     reason: Note
 
 
 class PasswordBody(Body):
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [
+                {"present_password": "an invented password", "new_password": "another invented one"}
+            ]
+        }
+    )
+
     present_password: Password | None = Field(
         default=None, description="Needed for one's own password; an owner sets another's without."
     )
@@ -69,9 +86,13 @@ class PasswordBody(Body):
 
 
 class ActView(View):
+    """One change. ``hash`` covers it and the hash of the act before it."""
+
     position: int
+    id: uuid.UUID
     at: datetime
     actor_kind: str
+    actor_id: uuid.UUID | None
     actor_name: str
     verb: str
     subject_kind: str

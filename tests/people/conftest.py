@@ -1,0 +1,56 @@
+"""People who sign in at the real route."""
+
+from collections.abc import Callable
+from datetime import UTC, datetime
+
+import pytest
+from fastapi.testclient import TestClient
+from httpx import Response
+
+from service.people.acts import add_person
+from service.people.models import Person
+from service.storage.engine import Database
+from service.storage.records import COMMAND_LINE
+from service.web.access import Role
+from tests.clients import PASSWORD
+
+SignIn = Callable[..., Response]
+AddPerson = Callable[..., Person]
+
+
+@pytest.fixture
+def add(database: Database, password_hash: str) -> AddPerson:
+    """Adds a person whose password is PASSWORD."""
+
+    def add_one(name: str, *roles: Role, password_hash: str = password_hash) -> Person:
+        with database.write() as session:
+            person = add_person(
+                session,
+                COMMAND_LINE,
+                name=name,
+                password_hash=password_hash,
+                roles=list(roles) or [Role.OPERATOR],
+                now=datetime.now(UTC),
+            )
+            session.commit()
+            return person
+
+    return add_one
+
+
+@pytest.fixture
+def enter(client: TestClient) -> SignIn:
+    """Posts to the sign-in route and forgets the cookie."""
+
+    def post(name: str, password: str = PASSWORD, **more: object) -> Response:
+        answer: Response = client.post(
+            "/api/v1/sign-ins", json={"name": name, "password": password, **more}
+        )
+        client.cookies.clear()
+        return answer
+
+    return post
+
+
+def bearer(token: str) -> dict[str, str]:
+    return {"Authorization": f"Bearer {token}"}
