@@ -7,7 +7,7 @@ from typing import Any, TypeVar
 import sqlalchemy as sa
 from sqlalchemy.orm import Session
 
-from service.errors import AlreadyThere, InvalidValue, NotFound
+from service.errors import AlreadyThere, NotFound
 from service.shop import rules
 from service.shop.models import THE_WORKSHOP, Instrument, Machine, Workshop
 from service.storage.records import Actor, record
@@ -61,7 +61,16 @@ def add_machine(session: Session, actor: Actor, values: dict[str, Any], now: dat
     return machine
 
 
+def shown_machine(session: Session, machine_id: uuid.UUID) -> Machine:
+    """The machine, to be read only."""
+    machine = session.get(Machine, machine_id)
+    if machine is None:
+        raise NotFound("There is no such machine.", value=str(machine_id))
+    return machine
+
+
 def machine_of(session: Session, machine_id: uuid.UUID, pointer: str | None = None) -> Machine:
+    """The machine, held until the end of the transaction."""
     machine = session.get(Machine, machine_id, with_for_update=True)
     if machine is None:
         raise NotFound("There is no such machine.", pointer=pointer, value=str(machine_id))
@@ -80,6 +89,7 @@ def add_instrument(
     session: Session, actor: Actor, values: dict[str, Any], now: datetime
 ) -> Instrument:
     _named(session, Instrument, values["name"])
+    rules.check_calibration(values["calibrated_on"], values["calibration_due"])
     instrument = Instrument(**values, created_at=now)
     session.add(instrument)
     session.flush()
@@ -101,15 +111,10 @@ def edit_instrument(
 ) -> None:
     if changes.get("name", found.name) != found.name:
         _named(session, Instrument, changes["name"])
-    done = changes.get("calibrated_on", found.calibrated_on)
-    due = changes.get("calibration_due", found.calibration_due)
-    if due < done:
-        raise InvalidValue(
-            "The calibration is due before it was done.",
-            pointer="/calibration_due",
-            value=str(due),
-            mend="Correct one of the two dates.",
-        )
+    rules.check_calibration(
+        changes.get("calibrated_on", found.calibrated_on),
+        changes.get("calibration_due", found.calibration_due),
+    )
     _change(session, actor, found, "instrument", changes, now)
 
 

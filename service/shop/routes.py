@@ -110,7 +110,7 @@ def add_machine(
 def show_machine(
     machine_id: uuid.UUID, reading: Reading, response: Response, _actor: access.Anybody
 ) -> MachineView:
-    machine = acts.machine_of(reading, machine_id)
+    machine = acts.shown_machine(reading, machine_id)
     tag(response, machine.version)
     return MachineView.model_validate(machine)
 

@@ -24,6 +24,17 @@ def day_in(zone_name: str, moment: datetime) -> date:
     return moment.astimezone(zone(zone_name)).date()
 
 
+def check_calibration(calibrated_on: date, calibration_due: date) -> None:
+    """Refuse a calibration that is due before it was done."""
+    if calibration_due < calibrated_on:
+        raise InvalidValue(
+            "The calibration is due before it was done.",
+            pointer="/calibration_due",
+            value=str(calibration_due),
+            mend="Correct one of the two dates.",
+        )
+
+
 def is_overdue(calibration_due: date, today: date) -> bool:
     """An instrument may be used on its due day, and decides nothing from the day after."""
     return today > calibration_due

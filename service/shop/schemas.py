@@ -2,14 +2,18 @@
 
 import uuid
 from datetime import date
-from typing import Annotated, Literal, Self
+from typing import Annotated, Literal
 
-from pydantic import ConfigDict, Field, StringConstraints, model_validator
+from pydantic import AfterValidator, ConfigDict, Field, StringConstraints
 
-from service.web.schemas import Body, Flag, Name, Number, View, Whole
+from service.web.schemas import Body, Flag, Name, Number, View, Whole, no_nul
 
 RewindRule = Literal["same unit", "new unit"]
-SerialNumber = Annotated[str, StringConstraints(strip_whitespace=True, min_length=1, max_length=60)]
+SerialNumber = Annotated[
+    str,
+    StringConstraints(strip_whitespace=True, min_length=1, max_length=60),
+    AfterValidator(no_nul),
+]
 Percent = Annotated[Number, Field(ge=0, le=50)]
 Speed = Annotated[Number, Field(gt=0, le=100_000)]
 Pulses = Annotated[Whole, Field(ge=1, le=1000)]
@@ -98,12 +102,6 @@ class InstrumentBody(Body):
     lead_resistance_ohm: Annotated[Number, Field(ge=0, le=100)] = 0.0
     calibrated_on: date
     calibration_due: date
-
-    @model_validator(mode="after")
-    def _dates_follow(self) -> Self:
-        if self.calibration_due < self.calibrated_on:
-            raise ValueError("calibration_due lies before calibrated_on; exchange or correct them")
-        return self
 
 
 class InstrumentEdit(Body):

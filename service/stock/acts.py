@@ -48,12 +48,21 @@ def add_spool(
     return spool
 
 
+def shown_spool(session: Session, text: str) -> Spool:
+    """The spool of a scanned or typed label, to be read only."""
+    return _spool(session, text, "", sa.select(Spool))
+
+
 def spool_by_label(session: Session, text: str, pointer: str = "") -> Spool:
-    """The spool of a scanned or typed label."""
+    """The spool of a scanned or typed label, held until the end of the transaction."""
+    return _spool(session, text, pointer, sa.select(Spool).with_for_update())
+
+
+def _spool(
+    session: Session, text: str, pointer: str, statement: "sa.Select[tuple[Spool]]"
+) -> Spool:
     serial = read_serial(text, "spool", pointer)
-    found = session.scalars(
-        sa.select(Spool).where(Spool.serial == serial).with_for_update()
-    ).one_or_none()
+    found = session.scalars(statement.where(Spool.serial == serial)).one_or_none()
     if found is None:
         raise NotFound(f"There is no spool {shown(serial)}.", pointer=pointer, value=text)
     return found

@@ -95,7 +95,7 @@ def add_spool(
 def show_spool(
     label: str, reading: Reading, response: Response, _actor: access.Anybody
 ) -> SpoolView:
-    spool = acts.spool_by_label(reading, label)
+    spool = acts.shown_spool(reading, label)
     tag(response, spool.version)
     return spool_view(spool)
 

@@ -20,6 +20,8 @@ CONDUCTORS: dict[str, Conductor] = {
 }
 # Enamel adds 5-15 % to the mass of fine bare copper (common practice, no source); the middle.
 ENAMEL_MASS = 1.10
+# No wire that can be wound comes near; the table holds to it too.
+HIGHEST_PER_METRE_OHM = 1e4
 # A measured spool this far outside the standard's band is asked about once.
 _BAND_MARGIN = 0.20
 
@@ -76,6 +78,13 @@ def own_resistance(
         resistance_ohm, temperature_c, 20.0, CONDUCTORS[conductor].temperature_coefficient_20
     )
     per_metre = at_20 / length_m
+    if not 0 < per_metre < HIGHEST_PER_METRE_OHM:
+        raise InvalidValue(
+            f"That makes {per_metre:.4g} Ω/m, which no winding wire has.",
+            pointer="/resistance_ohm",
+            value=resistance_ohm,
+            mend="Check the units of resistance and length.",
+        )
     low = wire.resistance_min * (1 - _BAND_MARGIN)
     high = wire.resistance_max * (1 + _BAND_MARGIN)
     if not low <= per_metre <= high and not confirmed:

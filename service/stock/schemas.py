@@ -4,11 +4,15 @@ import uuid
 from datetime import datetime
 from typing import Annotated, Literal
 
-from pydantic import ConfigDict, Field, StringConstraints
+from pydantic import AfterValidator, ConfigDict, Field, StringConstraints
 
-from service.web.schemas import Body, Flag, Name, Note, Number, View, Whole
+from service.web.schemas import Body, Flag, Name, Note, Number, View, Whole, no_nul
 
-Lot = Annotated[str, StringConstraints(strip_whitespace=True, min_length=1, max_length=60)]
+Lot = Annotated[
+    str,
+    StringConstraints(strip_whitespace=True, min_length=1, max_length=60),
+    AfterValidator(no_nul),
+]
 SpoolState = Literal["on the shelf", "quarantined", "empty"]
 
 
