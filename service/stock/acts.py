@@ -58,9 +58,7 @@ def spool_by_label(session: Session, text: str, pointer: str = "") -> Spool:
     return _spool(session, text, pointer, sa.select(Spool).with_for_update())
 
 
-def _spool(
-    session: Session, text: str, pointer: str, statement: "sa.Select[tuple[Spool]]"
-) -> Spool:
+def _spool(session: Session, text: str, pointer: str, statement: "sa.Select[Spool]") -> Spool:
     serial = read_serial(text, "spool", pointer)
     found = session.scalars(statement.where(Spool.serial == serial)).one_or_none()
     if found is None:

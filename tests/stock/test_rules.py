@@ -1,0 +1,78 @@
+"""Rules of stock: own resistance and what is left, against hand calculations."""
+
+import math
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from service.errors import ConfirmationNeeded, InvalidValue
+from service.stock.rules import mass_per_metre, own_resistance, remaining, wire_of
+
+AWG_42 = wire_of("AWG 42", "single", "copper")
+
+
+@pytest.mark.parametrize(
+    ("size", "build", "conductor", "pointer"),
+    [
+        ("AWG 99", "single", "copper", "/wire_size"),
+        ("42", "single", "copper", "/wire_size"),
+        ("", "single", "copper", "/wire_size"),
+        ("AWG 42", "tenfold", "copper", "/wire_size"),
+        ("AWG 42", "grade 1", "copper", "/wire_size"),
+        ("AWG 42", "single", "unobtainium", "/conductor"),
+    ],
+)
+def test_a_wire_that_no_standard_has_is_refused_with_what_is_known(
+    size: str, build: str, conductor: str, pointer: str
+) -> None:
+    with pytest.raises(InvalidValue) as refusal:
+        wire_of(size, build, conductor)
+    assert refusal.value.pointer == pointer
+    assert ("copper" if pointer == "/conductor" else "AWG 42") in str(refusal.value.mend)
+
+
+def test_a_metre_of_wire_weighs_its_copper_and_a_tenth_of_enamel() -> None:
+    # AWG 42 is 0.0025 in = 0.0635 mm: pi/4 x (63.5e-6 m)^2 x 8890 kg/m3 = 28.15 mg/m of copper.
+    bare = math.pi / 4 * 63.5e-6**2 * 8890
+    assert bare == pytest.approx(28.15e-6, rel=1e-3)
+    assert mass_per_metre(AWG_42, "copper") == pytest.approx(1.10 * bare, rel=1e-9)
+
+
+def test_a_resistance_at_25_c_is_brought_to_20_c() -> None:
+    # By hand: 5.5 ohm / (1 + 0.00393 x 5) = 5.394 ohm (copper's coefficient of IEC 60028).
+    per_metre = own_resistance(
+        AWG_42, "copper", resistance_ohm=5.5, length_m=1.0, temperature_c=25.0, confirmed=False
+    )
+    assert per_metre == pytest.approx(5.5 / 1.01965, rel=1e-9)
+
+
+@pytest.mark.parametrize("factor", [1e-3, 0.79, 1.21, 1e3])
+def test_a_value_far_from_the_standard_is_asked_back_unless_confirmed(factor: float) -> None:
+    edge = AWG_42.resistance_min if factor < 1 else AWG_42.resistance_max
+
+    def measured(confirmed: bool) -> float:
+        return own_resistance(
+            AWG_42,
+            "copper",
+            resistance_ohm=edge * factor * 2,
+            length_m=2.0,
+            temperature_c=20.0,
+            confirmed=confirmed,
+        )
+
+    with pytest.raises(ConfirmationNeeded) as question:
+        measured(confirmed=False)
+    assert question.value.pointer == "/resistance_ohm"
+    assert measured(confirmed=True) == pytest.approx(edge * factor)
+
+
+@given(net=st.floats(1e-3, 500), drawn=st.floats(0, 1e4), per_metre=st.floats(1e-7, 1e-1))
+def test_what_is_left_is_never_less_than_nothing_nor_more_than_there_was(
+    net: float, drawn: float, per_metre: float
+) -> None:
+    left = remaining(net, drawn, per_metre)
+    assert 0 <= left.mass_kg <= net
+    assert left.length_m == pytest.approx(left.mass_kg / per_metre)
+    if drawn >= net:
+        assert (left.length_m, left.mass_kg) == (0, 0)
