@@ -9,7 +9,7 @@ from typing import Any, cast
 
 import sqlalchemy as sa
 from sqlalchemy import tuple_
-from sqlalchemy.orm import Session
+from sqlalchemy.orm import Session, aliased
 
 from service.counters.folding import keep_state, machine_of, refold, state_of
 from service.counters.models import ContestedEvent, CounterEvent, Fold, Position
@@ -237,20 +237,32 @@ def _advance(
 
 
 def _stored_through(session: Session, position: Position) -> int:
-    """The highest sequence of the newest boot below which none is missing."""
-    wanted = position.contiguous + 1
-    stored = session.scalars(
-        sa.select(CounterEvent.sequence)
-        .where(
-            CounterEvent.device_id == position.device_id,
-            CounterEvent.boot == position.boot,
-            CounterEvent.sequence >= wanted,
+    """The highest sequence of the newest boot below which none is missing.
+
+    The first stored number from the mark on whose follower is not stored; it is the new mark only
+    where the mark's own follower has arrived.
+    """
+    following = aliased(CounterEvent)
+    ours = sa.and_(CounterEvent.device_id == position.device_id, CounterEvent.boot == position.boot)
+    arrived = session.scalar(
+        sa.select(CounterEvent.sequence).where(
+            ours, CounterEvent.sequence == position.contiguous + 1
         )
-        .order_by(CounterEvent.sequence)
-        .execution_options(yield_per=500)
     )
-    for sequence in stored:
-        if sequence != wanted:
-            break
-        wanted += 1
-    return wanted - 1
+    if arrived is None:
+        return position.contiguous
+    last = session.scalar(
+        sa.select(CounterEvent.sequence)
+        .outerjoin(
+            following,
+            sa.and_(
+                following.device_id == CounterEvent.device_id,
+                following.boot == CounterEvent.boot,
+                following.sequence == CounterEvent.sequence + 1,
+            ),
+        )
+        .where(ours, CounterEvent.sequence >= arrived, following.sequence.is_(None))
+        .order_by(CounterEvent.sequence)
+        .limit(1)
+    )
+    return arrived if last is None else last
