@@ -123,11 +123,11 @@ def change_person(
         person.parts = [kept.get(role) or PersonRole(role=role) for role in after["roles"]]
     person.name = after.get("name", person.name)
     person.active = after.get("active", person.active)
-    if not person.active:
-        end_all_sign_ins(session, person.id, now)
     # Where only roles moved the row itself is unchanged: its version must move all the same.
     flag_modified(person, "active")
     session.flush()
+    if not person.active:
+        end_all_sign_ins(session, person.id, now)
     record(
         session, actor, "change person", "person", person.id,
         at=now, before=before, after=after, reason=reason,

@@ -4,9 +4,11 @@ from collections.abc import Callable
 from datetime import UTC, datetime
 
 import pytest
+from argon2 import PasswordHasher
 from fastapi.testclient import TestClient
 from httpx import Response
 
+from service.people import passwords
 from service.people.acts import add_person
 from service.people.models import Person
 from service.storage.engine import Database
@@ -14,8 +16,25 @@ from service.storage.records import COMMAND_LINE
 from service.web.access import Role
 from tests.clients import PASSWORD
 
+REAL_HASHER = passwords._hasher
+_quick = PasswordHasher(time_cost=1, memory_cost=64, parallelism=1)
+_quick_hash = _quick.hash(PASSWORD)
+_quick_nobody = _quick.hash("nobody")
+
 SignIn = Callable[..., Response]
 AddPerson = Callable[..., Person]
+
+
+@pytest.fixture(autouse=True)
+def quick_hashes(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Hashing is slow on purpose, and these tests hash hundreds of times."""
+    monkeypatch.setattr(passwords, "_hasher", _quick)
+    monkeypatch.setattr(passwords, "_NOBODY", _quick_nobody)
+
+
+@pytest.fixture
+def password_hash() -> str:
+    return _quick_hash
 
 
 @pytest.fixture
