@@ -146,3 +146,7 @@ def people_add(
     password = typer.prompt("Password", hide_input=True, confirmation_prompt=True)
     add_from_terminal(Settings(), name, role, password)
     typer.echo(f"{name} may sign in now.")
+
+
+if __name__ == "__main__":
+    main()
