@@ -5,6 +5,7 @@ from datetime import date, datetime
 from typing import Any, TypeVar
 
 import sqlalchemy as sa
+from sqlalchemy.dialects import postgresql, sqlite
 from sqlalchemy.orm import Session
 
 from service.errors import AlreadyThere, NotFound
@@ -16,13 +17,19 @@ Thing = TypeVar("Thing", Machine, Instrument, Workshop)
 
 
 def ensure_workshop(session: Session, _now: datetime) -> Workshop:
-    """The one row of the workshop; made with defaults when the database is new."""
-    found = session.get(Workshop, THE_WORKSHOP)
-    if found is None:
-        found = Workshop(id=THE_WORKSHOP, name="Workshop", time_zone="UTC", rewind_rule="same unit")
-        session.add(found)
-        session.flush()
-    return found
+    """The one row of the workshop; made with defaults when the database is new.
+
+    Several processes may start on one new database: the first makes the row, the others find it.
+    """
+    insert = postgresql.insert if session.get_bind().dialect.name == "postgresql" else sqlite.insert
+    session.execute(
+        insert(Workshop)
+        .values(
+            id=THE_WORKSHOP, name="Workshop", time_zone="UTC", rewind_rule="same unit", version=1
+        )
+        .on_conflict_do_nothing()
+    )
+    return workshop(session)
 
 
 def workshop(session: Session) -> Workshop:
@@ -89,12 +96,26 @@ def add_instrument(
     session: Session, actor: Actor, values: dict[str, Any], now: datetime
 ) -> Instrument:
     _named(session, Instrument, values["name"])
-    rules.check_calibration(values["calibrated_on"], values["calibration_due"])
+    _check_instrument(values)
     instrument = Instrument(**values, created_at=now)
     session.add(instrument)
     session.flush()
     record(session, actor, "add instrument", "instrument", instrument.id, at=now, after=values)
     return instrument
+
+
+def _check_instrument(values: dict[str, Any]) -> None:
+    rules.check_accuracy(
+        rules.Accuracy(
+            measures_resistance=values["measures_resistance"],
+            measures_inductance=values["measures_inductance"],
+            resistance_relative=values["resistance_accuracy_relative"],
+            resistance_ohm=values["resistance_accuracy_ohm"],
+            inductance_relative=values["inductance_accuracy_relative"],
+            inductance_h=values["inductance_accuracy_h"],
+        )
+    )
+    rules.check_calibration(values["calibrated_on"], values["calibration_due"])
 
 
 def instrument_of(
@@ -111,18 +132,19 @@ def edit_instrument(
 ) -> None:
     if changes.get("name", found.name) != found.name:
         _named(session, Instrument, changes["name"])
-    rules.check_calibration(
-        changes.get("calibrated_on", found.calibrated_on),
-        changes.get("calibration_due", found.calibration_due),
-    )
+    present = {column.key: getattr(found, column.key) for column in sa.inspect(Instrument).columns}
+    _check_instrument({**present, **changes})
     _change(session, actor, found, "instrument", changes, now)
 
 
 def _change(
     session: Session, actor: Actor, thing: Thing, kind: str, changes: dict[str, Any], now: datetime
 ) -> None:
-    before = {name: getattr(thing, name) for name in changes}
-    for name, value in changes.items():
+    after = {name: value for name, value in changes.items() if getattr(thing, name) != value}
+    if not after:
+        return
+    before = {name: getattr(thing, name) for name in after}
+    for name, value in after.items():
         setattr(thing, name, value)
     session.flush()
-    record(session, actor, f"change {kind}", kind, thing.id, at=now, before=before, after=changes)
+    record(session, actor, f"change {kind}", kind, thing.id, at=now, before=before, after=after)

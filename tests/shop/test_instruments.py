@@ -37,7 +37,12 @@ def test_an_instrument_comes_back_as_it_was_entered(as_lead: TestClient) -> None
 def test_percent_is_stored_relative_and_shown_as_percent(
     as_owner: TestClient, database: Database, percent: float
 ) -> None:
-    body = added(as_owner, resistance_accuracy_percent=percent, inductance_accuracy_percent=percent)
+    body = added(
+        as_owner,
+        resistance_accuracy_percent=percent,
+        inductance_accuracy_percent=percent,
+        inductance_accuracy_h=1e-6,
+    )
     with database.read() as session:
         stored = session.get_one(Instrument, uuid.UUID(body["id"]))
         relative = stored.resistance_accuracy_relative, stored.inductance_accuracy_relative
@@ -128,6 +133,31 @@ def test_an_accuracy_that_is_no_number_is_refused(as_lead: TestClient, number: s
         headers={"Content-Type": "application/json", "If-Match": '"1"'},
     )
     assert (answer.status_code, answer.json()["pointer"]) == (422, "/resistance_accuracy_ohm")
+
+
+@pytest.mark.parametrize(
+    ("changes", "pointer"),
+    [
+        ({"measures_resistance": False, "measures_inductance": False}, "/measures_resistance"),
+        (
+            {"resistance_accuracy_percent": 0, "resistance_accuracy_ohm": 0},
+            "/resistance_accuracy_percent",
+        ),
+        ({"inductance_accuracy_percent": 0.0}, "/inductance_accuracy_percent"),
+    ],
+)
+def test_an_instrument_that_is_never_wrong_is_refused(
+    as_lead: TestClient, changes: Json, pointer: str
+) -> None:
+    answer = as_lead.post(INSTRUMENTS, json=instrument(**changes))
+    assert (answer.status_code, answer.json()["pointer"]) == (422, pointer)
+
+
+def test_an_edit_cannot_take_the_last_doubt_away(as_lead: TestClient) -> None:
+    path = f"{INSTRUMENTS}/{added(as_lead)['id']}"
+    edit = {"inductance_accuracy_percent": 0.0}
+    answer = as_lead.patch(path, json=edit, headers={"If-Match": '"1"'})
+    assert (answer.status_code, answer.json()["pointer"]) == (422, "/inductance_accuracy_percent")
 
 
 def test_two_instruments_of_one_name_are_refused(as_lead: TestClient) -> None:

@@ -1,9 +1,13 @@
 """The workshop's own settings over HTTP."""
 
+from concurrent.futures import ThreadPoolExecutor
+from datetime import datetime
+
 import pytest
 import sqlalchemy as sa
 from fastapi.testclient import TestClient
 
+from service.shop.acts import ensure_workshop
 from service.storage.engine import Database
 from service.storage.records import Act, verify
 from service.web.access import Role
@@ -87,3 +91,28 @@ def test_an_edit_is_an_act_with_what_was_before(as_lead: TestClient, database: D
         assert (act.before, act.after) == ({"name": "Workshop"}, {"name": "Alder Lane Winding"})
         assert act.actor_name == "Invented Lead"
         assert verify(session)[1] is None
+
+
+def test_an_edit_that_changes_nothing_is_no_act(as_lead: TestClient, database: Database) -> None:
+    present = as_lead.get(WORKSHOP).json()
+    same = {name: present[name] for name in ("name", "time_zone", "rewind_rule")}
+    for body in ({}, same, {"name": None}):
+        answer = as_lead.patch(WORKSHOP, json=body, headers={"If-Match": '"1"'})
+        assert (answer.status_code, answer.json()) == (200, present)
+    with database.read() as session:
+        assert session.scalars(sa.select(Act).where(Act.subject_kind == "workshop")).all() == []
+
+
+def test_processes_that_start_at_once_make_one_workshop(database_url: str, now: datetime) -> None:
+    def start(_process: int) -> str:
+        database = Database(database_url)
+        try:
+            with database.write() as session:
+                name = ensure_workshop(session, now).name
+                session.commit()
+                return name
+        finally:
+            database.close()
+
+    with ThreadPoolExecutor(4) as pool:
+        assert list(pool.map(start, range(4))) == ["Workshop"] * 4
