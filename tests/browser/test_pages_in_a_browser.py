@@ -86,7 +86,7 @@ def test_the_count_on_the_screen_follows_the_machine(
     page = open_page(token)
     with page.expect_response("**/api/v1/live/floor"):
         page.goto("/floor")
-    for sequence, (turns, to_go) in enumerate(((0, "7600"), (7588, "12"), (7610, "−10")), 1):
+    for sequence, (turns, to_go) in enumerate(((0, "7600"), (7588, "12"), (7610, "10")), 1):
         event = {
             "boot": 1, "sequence": sequence, "kind": "total", "count": turns, "speed_rpm": 980.0,
         }  # fmt: skip
@@ -97,6 +97,7 @@ def test_the_count_on_the_screen_follows_the_machine(
         )
         assert answer.status_code == 200, answer.text
         expect(page.locator('[data-live="to_go"]')).to_have_text(to_go)
+    expect(page.locator('[data-live="to_go_words"]')).to_have_text("turns too many")
     expect(page.locator('[data-live="speed"]')).to_have_text(", 980 rpm")
 
 

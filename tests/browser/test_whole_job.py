@@ -1,6 +1,5 @@
 """The whole job in a browser, from an empty workshop to the month's yield."""
 
-import re
 from dataclasses import dataclass
 from datetime import UTC, datetime, timedelta
 
@@ -35,6 +34,7 @@ RECIPE = {
     "tolerance.resistance_percent": "5",
     "tolerance.inductance_percent": "8",
 }
+EXPECTED = ("Resistance at 20 °C", "Inductance as a meter shows it")
 
 
 def fill(page: Page, **fields: str) -> None:
@@ -127,7 +127,7 @@ def set_up_shop(page: Page) -> str:
 
 
 def make_recipe(page: Page) -> tuple[str, str]:
-    """Drafted, foreseen, released; resistance and inductance as they are expected."""
+    """Drafted, foreseen, released; the resistance (kΩ) and inductance (H) that are expected."""
     page.goto("/recipes/new")
     fill(page, name="Harbour neck", **RECIPE)
     page.locator('[name="scatter.traverse"]').select_option("triangle")
@@ -137,10 +137,10 @@ def make_recipe(page: Page) -> tuple[str, str]:
     press(page, "Keep the draft")
     press(page, "Release it")
     expect(page.get_by_text("Frozen when it was released.")).to_be_visible()
-    cells = page.locator("table.expected tr")
-    resistance = cells.filter(has_text="Resistance at 20 °C").locator("td").first.inner_text()
-    shown = cells.filter(has_text="Inductance as a meter shows it").locator("td").first.inner_text()
-    return resistance, shown
+    rows = page.locator("table.expected tr")
+    told = (rows.filter(has_text=name).locator("td").first.inner_text() for name in EXPECTED)
+    resistance, inductance = (text.split()[0] for text in told)
+    return resistance, inductance
 
 
 def order_and_plan(page: Page) -> None:
@@ -181,14 +181,13 @@ def measure(page: Page, serial: str, resistance: str, inductance: str) -> None:
     page.goto("/bench")
     page.get_by_label("Coil’s label").fill(serial.lower().replace("-", ""))
     page.keyboard.press("Enter")
-    number = re.sub(r"[^0-9.]", "", resistance)
     page.locator('[name="resistance_instrument_id"]').select_option(label="Bridge")
     page.locator('[name="inductance_instrument_id"]').select_option(label="Bridge")
-    fill(page, resistance_ohm=number, coil_temperature_c="20,0", inductance_h=inductance)
+    fill(page, resistance_ohm=resistance, coil_temperature_c="20,0", inductance_h=inductance)
     press(page, "Judge this coil")
     expect(page.locator("#refusal")).to_contain_text("Is this value meant?")
     assert page.locator('[name="inductance_h"]').input_value() == inductance
-    fill(page, resistance_ohm=number.replace(".", ",") + "k")
+    fill(page, resistance_ohm=resistance.replace(".", ",") + "k")
     press(page, "Judge this coil")
     answers = page.locator(".answer > .state")
     expect(answers).to_have_text(["conforms", "as predicted", "learning"])

@@ -19,6 +19,10 @@ function putBack(form) {
   const kept = sessionStorage.getItem(PREFIX + form.dataset.keep);
   if (!kept) return;
   const typed = JSON.parse(kept);
+  const told = document.createElement("p");
+  told.className = "hint";
+  told.textContent = "What was typed here before is put back.";
+  form.prepend(told);
   for (const field of fieldsOf(form)) {
     const values = typed[field.name] ?? [];
     if (["radio", "checkbox"].includes(field.type)) field.checked = values.includes(field.value);

@@ -32,7 +32,8 @@ function take(count) {
     if (!document.querySelector("form[data-keep], form.entry-form")) location.reload();
     return;
   }
-  put(place, "to_go", shown(count.to_go));
+  put(place, "to_go", shown(Math.abs(count.to_go)));
+  put(place, "to_go_words", count.to_go < 0 ? "turns too many" : "turns to go");
   put(place, "turns", shown(count.turns));
   put(place, "speed", count.speed_rpm ? `, ${Math.round(count.speed_rpm)} rpm` : "");
   const progress = at(place, "progress");

@@ -11,6 +11,8 @@ document.addEventListener("submit", (event) => {
     return;
   }
   form.dataset.sent = "yes";
+  // The next person at this tablet begins with empty forms.
+  if (new URL(form.action).pathname === "/sign-out") sessionStorage.clear();
   // The button that was pressed carries a value: disable after the form data is taken.
   setTimeout(() => {
     for (const button of form.querySelectorAll("button")) button.disabled = true;
