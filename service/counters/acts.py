@@ -7,7 +7,6 @@ from datetime import datetime
 from typing import Any, cast
 
 import sqlalchemy as sa
-from sqlalchemy import tuple_
 from sqlalchemy.orm import Session
 
 from service.counters.folding import fold_of, refold
@@ -109,19 +108,6 @@ def assign_waiting(
     moved = cast("sa.CursorResult[Any]", result).rowcount
     if moved == 0:
         raise NotFound("No waiting counts lie in that range.", pointer="/first_sequence")
-    first = (boot, first_sequence - 1)
-    if first < (row.start_boot, row.start_sequence):
-        earlier = session.execute(
-            sa.select(CounterEvent.count)
-            .where(
-                CounterEvent.device_id == device_id,
-                tuple_(CounterEvent.boot, CounterEvent.sequence) <= first,
-            )
-            .order_by(CounterEvent.boot.desc(), CounterEvent.sequence.desc())
-            .limit(1)
-        ).scalar()
-        row.start_boot, row.start_sequence = first
-        row.start_count = earlier or 0
     row.late_turns = refold(session, row, late=True).turns
     session.flush()
     after = {

@@ -53,7 +53,7 @@ def machine_of(session: Session, device_id: uuid.UUID) -> Machine:
 def refold(session: Session, row: Fold, *, late: bool = False) -> FoldState:
     """The fold from all events of the attempt, made anew; ``late`` takes in late ones too."""
     places = ["attempt", "late"] if late else ["attempt"]
-    events = session.execute(
+    rows = session.execute(
         sa.select(
             CounterEvent.boot,
             CounterEvent.sequence,
@@ -62,16 +62,35 @@ def refold(session: Session, row: Fold, *, late: bool = False) -> FoldState:
             CounterEvent.device_time,
         ).where(CounterEvent.attempt_id == row.attempt_id, CounterEvent.place.in_(places))
     )
-    start = begin(row.start_boot, row.start_sequence, row.start_count)
-    return fold(start, (Event(*event) for event in events), machine_of(session, row.device_id))
+    events = [Event(*one) for one in rows]
+    first = min((event.position for event in events), default=None)
+    return fold(_start(session, row, first), events, machine_of(session, row.device_id))
+
+
+def _start(session: Session, row: Fold, first: tuple[int, int] | None) -> FoldState:
+    """Where the counter stood before ``first``: at the window's start, or before counts that
+    came ahead of it and were assigned by a person."""
+    if first is None or first > (row.start_boot, row.start_sequence):
+        return begin(row.start_boot, row.start_sequence, row.start_count)
+    boot, sequence = first
+    earlier = session.scalar(
+        sa.select(CounterEvent.count)
+        .where(
+            CounterEvent.device_id == row.device_id,
+            sa.tuple_(CounterEvent.boot, CounterEvent.sequence) < first,
+        )
+        .order_by(CounterEvent.boot.desc(), CounterEvent.sequence.desc())
+        .limit(1)
+    )
+    return begin(boot, sequence - 1, earlier or 0)
 
 
 def hear_attempt_started(session: Session, event: AttemptStarted) -> None:
     """Open a window in the device's stream: what comes from now on belongs to this attempt."""
     for device_id in session.scalars(
-        sa.select(Device.id).where(
-            Device.machine_id == event.machine_id, Device.revoked_at.is_(None)
-        )
+        sa.select(Device.id)
+        .where(Device.machine_id == event.machine_id, Device.revoked_at.is_(None))
+        .order_by(Device.issued_at.desc(), Device.id.desc())
     ):
         position = session.get(Position, device_id)
         boot, sequence, count = (
@@ -90,7 +109,7 @@ def hear_attempt_started(session: Session, event: AttemptStarted) -> None:
         keep_state(row, begin(boot, sequence, count))
         session.add(row)
         session.flush()
-        return  # a machine has one counter in force; a second would count the same turns twice
+        return  # the newest key counts; a second counter would count the same turns twice
 
 
 def hear_attempt_ended(session: Session, event: AttemptEnded) -> MachineTurns | None:

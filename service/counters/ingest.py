@@ -64,13 +64,14 @@ def ingest(session: Session, batch: Batch) -> Taken:
     other, batches of different devices run side by side.
     """
     position = _position(session, batch)
-    unique = {(event.boot, event.sequence): event for event in batch.events}
-    known = _known(session, batch.device_id, unique)
-    duplicates = len(batch.events) - len(unique)
+    known = _known(session, batch.device_id, {(one.boot, one.sequence) for one in batch.events})
+    duplicates = 0
     contested: list[EventBody] = []
     fresh: list[EventBody] = []
-    for key, event in unique.items():
+    for event in batch.events:
+        key = (event.boot, event.sequence)
         if key not in known:
+            known[key] = (event.kind, event.count)
             fresh.append(event)
         elif known[key] == (event.kind, event.count):
             duplicates += 1

@@ -3,11 +3,11 @@
 import asyncio
 import uuid
 from datetime import UTC, datetime
-from typing import Annotated, cast
+from typing import cast
 
 import sqlalchemy as sa
 from fastapi import APIRouter, Request, Response
-from pydantic import Field, ValidationError
+from pydantic import ValidationError
 
 from service.counters import acts
 from service.counters.ingest import Batch, Taken
@@ -15,21 +15,23 @@ from service.counters.live import LiveHub
 from service.counters.models import CounterEvent, Device, Fold, Position
 from service.counters.schemas import (
     BatchBody,
+    Cardinal,
     DeviceBody,
     DeviceView,
     EventBody,
     FoldView,
     IssuedDeviceView,
+    Ordinal,
     RefusedEvent,
     TakenView,
     WaitingView,
 )
-from service.errors import NotFound
+from service.errors import NotFound, shown_value
 from service.runs.acts import run_by_label
 from service.shop.models import Machine
 from service.storage.writer import GroupWriter
 from service.web import access
-from service.web.schemas import Body, Name, Note, Whole
+from service.web.schemas import Body, Name, Note
 from service.web.unit import Now, Reading, UnitRoute, Work
 
 router = APIRouter(prefix="/api/v1/counters", route_class=UnitRoute, tags=["counters"])
@@ -52,14 +54,14 @@ def _checked(events: list[dict[str, object]]) -> tuple[list[EventBody], list[Ref
             good.append(EventBody.model_validate(event))
         except ValidationError as error:
             first = error.errors()[0]
-            field = ".".join(str(part) for part in first["loc"])
+            path = [_shown(str(part)) for part in first["loc"]]
             refused.append(
                 RefusedEvent(
                     index=index,
                     boot=_plain(event.get("boot")),
                     sequence=_plain(event.get("sequence")),
-                    detail=f"{field}: {first['msg']}.",
-                    pointer=f"/events/{index}/{'/'.join(str(part) for part in first['loc'])}",
+                    detail=f"{'.'.join(path)}: {first['msg']}.",
+                    pointer=f"/events/{index}/{'/'.join(path)}",
                     mend=_MENDS.get(first["type"], first["msg"]),
                 )
             )
@@ -67,7 +69,12 @@ def _checked(events: list[dict[str, object]]) -> tuple[list[EventBody], list[Ref
 
 
 def _plain(value: object) -> object:
-    return value if isinstance(value, int | str) else None
+    return _shown(value) if isinstance(value, str) else value if isinstance(value, int) else None
+
+
+def _shown(text: str) -> str:
+    """Short, and without the lone surrogates that JSON lets through and UTF-8 cannot carry."""
+    return str(shown_value(text.encode("utf-8", "replace").decode()))
 
 
 @router.post("/events")
@@ -200,9 +207,9 @@ def waiting_counts(reading: Reading, _actor: access.Anybody) -> list[WaitingView
 
 class AssignBody(Body):
     device: Name
-    boot: Annotated[Whole, Field(ge=0)]
-    first_sequence: Annotated[Whole, Field(ge=1)]
-    last_sequence: Annotated[Whole, Field(ge=1)]
+    boot: Cardinal
+    first_sequence: Ordinal
+    last_sequence: Ordinal
     run: Name
     reason: Note
 

@@ -12,6 +12,7 @@ EventKind = Literal["total", "start", "stop", "wire break", "back-count", "index
 LARGEST = 2**53
 
 Cardinal = Annotated[Whole, Field(ge=0, le=LARGEST)]
+Ordinal = Annotated[Whole, Field(ge=1, le=LARGEST)]
 
 
 class EventBody(Body):
@@ -33,7 +34,7 @@ class EventBody(Body):
     )
 
     boot: Cardinal
-    sequence: Annotated[Whole, Field(ge=1, le=LARGEST)]
+    sequence: Ordinal
     kind: EventKind = "total"
     count: Cardinal
     device_time: Moment | None = None

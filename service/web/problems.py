@@ -1,5 +1,6 @@
 """Every error leaves as problem details (RFC 9457); pages get the same words as a page."""
 
+import json
 import logging
 import uuid
 from collections.abc import Callable
@@ -45,10 +46,16 @@ _MENDS = {
 ErrorPage = Callable[[Request, Problem], Response]
 
 
+class _ProblemResponse(JSONResponse):
+    media_type = MEDIA_TYPE
+
+    def render(self, content: Any) -> bytes:
+        """JSON text may carry lone surrogates in, which UTF-8 cannot carry out again."""
+        return json.dumps(content, ensure_ascii=False).encode("utf-8", "replace")
+
+
 def answer(problem: Problem) -> JSONResponse:
-    return JSONResponse(
-        problem.body(), problem.status, headers=problem.headers, media_type=MEDIA_TYPE
-    )
+    return _ProblemResponse(problem.body(), problem.status, headers=problem.headers)
 
 
 def _validation_body(error: RequestValidationError) -> dict[str, Any]:
@@ -95,7 +102,7 @@ def install(app: FastAPI, error_page: ErrorPage, wants_page: Callable[[Request],
         if wants_page(request):
             problem = _Listed(str(body["detail"]), mend=str(body.get("mend", "")))
             return error_page(request, problem)
-        return JSONResponse(body, 422, media_type=MEDIA_TYPE)
+        return _ProblemResponse(body, 422)
 
     async def on_http(request: Request, error: Exception) -> Response:
         assert isinstance(error, HTTPException)  # noqa: S101 - registered for it only

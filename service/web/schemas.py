@@ -47,7 +47,17 @@ Note = Annotated[
     StringConstraints(strip_whitespace=True, min_length=1, max_length=1000),
     AfterValidator(no_nul),
 ]
-Moment = AwareDatetime
+
+
+def _storable(moment: datetime) -> datetime:
+    if not _FIRST_YEAR <= moment.year <= _LAST_YEAR:
+        raise ValueError(f"the year must lie from {_FIRST_YEAR} to {_LAST_YEAR}")
+    return moment
+
+
+# Far enough from the ends of the calendar that no change of time zone leaves it.
+_FIRST_YEAR, _LAST_YEAR = 1900, 9000
+Moment = Annotated[AwareDatetime, AfterValidator(_storable)]
 Json = dict[str, Any]
 
 __all__ = [

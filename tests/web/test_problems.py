@@ -123,3 +123,14 @@ def test_a_refusal_does_not_repeat_a_password(web: TestClient) -> None:
     answer = web.post("/notes", json={"name": "x", "password": "an invented secret"})
     assert problem(answer)["pointer"] == "/password"
     assert "an invented secret" not in answer.text
+
+
+@pytest.mark.parametrize(
+    ("body", "pointer"), [(r'{"name": "\ud800"}', "/name"), (r'{"name": "x", "\udfff": 1}', "/")]
+)
+def test_text_that_is_no_unicode_is_refused_in_words(
+    web: TestClient, body: str, pointer: str
+) -> None:
+    answer = web.post("/notes", content=body, headers={"content-type": "application/json"})
+    assert answer.status_code == 422
+    assert problem(answer)["pointer"] == pointer
