@@ -1,6 +1,7 @@
 """What is done about stock: receive, measure, draw, take out of use."""
 
 from datetime import datetime
+from typing import Any
 
 import sqlalchemy as sa
 from sqlalchemy.orm import Session
@@ -11,6 +12,15 @@ from service.stock.models import MagnetLot, Spool, SpoolDraw
 from service.stock.rules import Remaining
 from service.storage.records import Actor, record
 from service.storage.serials import draw_serial, read_serial, shown
+
+
+def _new_serial(session: Session, kind: str) -> str:
+    """A serial that no label carries yet: there are 24 million of a kind."""
+    column = Spool.serial if kind == "spool" else MagnetLot.serial
+    while True:
+        serial = draw_serial(kind)
+        if session.scalar(sa.select(column).where(column == serial)) is None:
+            return serial
 
 
 def add_spool(
@@ -27,7 +37,7 @@ def add_spool(
     """Receive a spool; it gets a label."""
     wire = rules.wire_of(wire_size, wire_build, conductor)
     spool = Spool(
-        serial=draw_serial("spool"),
+        serial=_new_serial(session, "spool"),
         wire_size=wire.designation,
         wire_build=wire.build,
         conductor=conductor,
@@ -105,18 +115,65 @@ def measure_spool(
 def set_spool_state(
     session: Session, actor: Actor, spool: Spool, *, state: str, reason: str, now: datetime
 ) -> None:
-    before = {"state": spool.state}
-    spool.state = state
+    """Put a spool aside, mark it empty, or put it back. Raises WrongState, NotAllowed."""
+    rules.check_state_change(spool.state, state, actor.roles)
+    _change(session, actor, spool, "spool", {"state": state}, reason, now)
+
+
+def correct_spool(
+    session: Session,
+    actor: Actor,
+    spool: Spool,
+    *,
+    changes: dict[str, Any],
+    reason: str,
+    now: datetime,
+) -> None:
+    """Correct what was entered on receipt: ``supplier_lot``, ``net_mass_kg``.
+
+    The wire stays: coils were wound from it as what it was entered as.
+    """
+    _change(session, actor, spool, "spool", changes, reason, now)
+
+
+def correct_magnet_lot(
+    session: Session,
+    actor: Actor,
+    lot: MagnetLot,
+    *,
+    changes: dict[str, Any],
+    reason: str,
+    now: datetime,
+) -> None:
+    """Correct ``material``, ``piece``, ``supplier_lot`` or ``pieces`` of a lot."""
+    _change(session, actor, lot, "magnet lot", changes, reason, now)
+
+
+def _change(
+    session: Session,
+    actor: Actor,
+    thing: Spool | MagnetLot,
+    kind: str,
+    changes: dict[str, Any],
+    reason: str,
+    now: datetime,
+) -> None:
+    after = {name: value for name, value in changes.items() if getattr(thing, name) != value}
+    if not after:
+        return
+    before = {name: getattr(thing, name) for name in after}
+    for name, value in after.items():
+        setattr(thing, name, value)
     session.flush()
     record(
-        session, actor, "change spool", "spool", spool.id,
-        at=now, before=before, after={"state": state}, reason=reason,
+        session, actor, f"change {kind}", kind, thing.id,
+        at=now, before=before, after=after, reason=reason,
     )  # fmt: skip
 
 
 def kg_per_metre(spool: Spool) -> float:
     wire = rules.wire_of(spool.wire_size, spool.wire_build, spool.conductor)
-    return rules.mass_per_metre(wire, spool.conductor)
+    return rules.mass_per_metre(wire, spool.conductor, spool.resistance_per_metre_ohm)
 
 
 def draw_wire(
@@ -162,7 +219,7 @@ def add_magnet_lot(
     now: datetime,
 ) -> MagnetLot:
     lot = MagnetLot(
-        serial=draw_serial("magnet lot"),
+        serial=_new_serial(session, "magnet lot"),
         material=material,
         piece=piece,
         supplier_lot=supplier_lot,
@@ -177,6 +234,7 @@ def add_magnet_lot(
 
 
 def magnet_lot_by_label(session: Session, text: str, pointer: str = "") -> MagnetLot:
+    """The lot of a scanned or typed label."""
     serial = read_serial(text, "magnet lot", pointer)
     found = session.scalars(sa.select(MagnetLot).where(MagnetLot.serial == serial)).one_or_none()
     if found is None:

@@ -5,10 +5,12 @@ from typing import Annotated
 import sqlalchemy as sa
 from fastapi import APIRouter, Query, Request, Response
 
+from service.errors import InvalidValue
 from service.stock import acts
 from service.stock.models import MagnetLot, Spool
 from service.stock.schemas import (
     MagnetLotBody,
+    MagnetLotEdit,
     MagnetLotView,
     SpoolBody,
     SpoolEdit,
@@ -122,6 +124,7 @@ def measure_spool(
         confirmed=body.confirmed,
         now=now,
     )
+    response.headers["Location"] = f"/api/v1/spools/{spool.serial}"
     tag(response, spool.version)
     return spool_view(spool)
 
@@ -136,10 +139,19 @@ def change_spool(
     actor: access.FloorStaff,
     if_match: IfMatch = None,
 ) -> SpoolView:
-    """Quarantine a spool, mark it empty, or put it back on the shelf."""
+    """Quarantine a spool, mark it empty, put it back, or correct its mass or its supplier's lot."""
     spool = acts.spool_by_label(work, label)
     check_seen(if_match, spool.version)
-    acts.set_spool_state(work, actor, spool, state=body.state, reason=body.reason, now=now)
+    changes = body.model_dump(exclude={"state", "reason"}, exclude_none=True)
+    if body.state is None and not changes:
+        raise InvalidValue(
+            "This change says not what is to change.",
+            pointer="/state",
+            mend="Send a state, net_mass_kg or supplier_lot.",
+        )
+    acts.correct_spool(work, actor, spool, changes=changes, reason=body.reason, now=now)
+    if body.state is not None:
+        acts.set_spool_state(work, actor, spool, state=body.state, reason=body.reason, now=now)
     tag(response, spool.version)
     return spool_view(spool)
 
@@ -164,9 +176,33 @@ def add_magnet_lot(
 ) -> MagnetLotView:
     lot = acts.add_magnet_lot(work, actor, **body.model_dump(), now=now)
     response.headers["Location"] = f"/api/v1/magnet-lots/{lot.serial}"
+    tag(response, lot.version)
     return magnet_lot_view(lot)
 
 
 @router.get("/magnet-lots/{label}")
-def show_magnet_lot(label: str, reading: Reading, _actor: access.Anybody) -> MagnetLotView:
-    return magnet_lot_view(acts.magnet_lot_by_label(reading, label))
+def show_magnet_lot(
+    label: str, reading: Reading, response: Response, _actor: access.Anybody
+) -> MagnetLotView:
+    lot = acts.magnet_lot_by_label(reading, label)
+    tag(response, lot.version)
+    return magnet_lot_view(lot)
+
+
+@router.patch("/magnet-lots/{label}")
+def correct_magnet_lot(
+    label: str,
+    body: MagnetLotEdit,
+    work: Work,
+    now: Now,
+    response: Response,
+    actor: access.FloorStaff,
+    if_match: IfMatch = None,
+) -> MagnetLotView:
+    """Correct what was entered when the lot came."""
+    lot = acts.magnet_lot_by_label(work, label)
+    check_seen(if_match, lot.version)
+    changes = body.model_dump(exclude={"reason"}, exclude_none=True)
+    acts.correct_magnet_lot(work, actor, lot, changes=changes, reason=body.reason, now=now)
+    tag(response, lot.version)
+    return magnet_lot_view(lot)

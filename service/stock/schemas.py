@@ -13,6 +13,8 @@ Lot = Annotated[
     StringConstraints(strip_whitespace=True, min_length=1, max_length=60),
     AfterValidator(no_nul),
 ]
+Mass = Annotated[Number, Field(gt=0, le=500)]
+Pieces = Annotated[Whole, Field(ge=1, le=1_000_000)]
 SpoolState = Literal["on the shelf", "quarantined", "empty"]
 
 
@@ -34,7 +36,7 @@ class SpoolBody(Body):
     wire_build: Lot
     conductor: Name = "copper"
     supplier_lot: Lot
-    net_mass_kg: Annotated[Number, Field(gt=0, le=500)]
+    net_mass_kg: Mass
 
 
 class SpoolMeasurementBody(Body):
@@ -57,7 +59,17 @@ class SpoolMeasurementBody(Body):
 
 
 class SpoolEdit(Body):
-    state: SpoolState
+    """What is left out stays. The wire itself cannot be corrected: receive the spool anew."""
+
+    model_config = ConfigDict(
+        json_schema_extra={
+            "examples": [{"state": "quarantined", "reason": "Enamel flakes at the flange."}]
+        }
+    )
+
+    state: SpoolState | None = None
+    supplier_lot: Lot | None = None
+    net_mass_kg: Mass | None = None
     reason: Note
 
 
@@ -97,7 +109,21 @@ class MagnetLotBody(Body):
     material: Lot
     piece: Lot
     supplier_lot: Lot
-    pieces: Annotated[Whole, Field(ge=1, le=1_000_000)]
+    pieces: Pieces
+
+
+class MagnetLotEdit(Body):
+    """What is left out stays."""
+
+    model_config = ConfigDict(
+        json_schema_extra={"examples": [{"pieces": 580, "reason": "Twenty came broken."}]}
+    )
+
+    material: Lot | None = None
+    piece: Lot | None = None
+    supplier_lot: Lot | None = None
+    pieces: Pieces | None = None
+    reason: Note
 
 
 class MagnetLotView(View):

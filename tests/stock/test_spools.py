@@ -8,6 +8,7 @@ import pytest
 import sqlalchemy as sa
 from fastapi.testclient import TestClient
 
+from service.physics.wire import standard_wire
 from service.stock.acts import draw_wire, spool_by_label
 from service.stock.models import Spool, SpoolDraw
 from service.storage.engine import Database
@@ -33,8 +34,8 @@ def test_a_spool_is_received_and_gets_a_label(sign_in: Enter, role: Role) -> Non
     assert (body["serial"][0], body["conductor"], body["state"]) == ("S", "copper", "on the shelf")
     assert (body["resistance_ohm_per_m"], body["resistance_measured_at"]) == (None, None)
     assert body["remaining_mass_kg"] == 1.2
-    # By hand: 1.2 kg / (28.15e-6 kg/m of copper x 1.10 with enamel) = 38.7 km.
-    assert body["remaining_length_m"] == pytest.approx(1.2 / (1.1 * 28.154e-6), rel=1e-3)
+    # By hand: 1.2 kg / (28.15 mg/m of copper and 1.05 mg/m of enamel) = 41.1 km.
+    assert body["remaining_length_m"] == pytest.approx(1.2 / 29.20e-6, rel=1e-3)
     shown = client.get(answer.headers["location"])
     assert (shown.status_code, shown.json()) == (200, body)
     assert shown.headers["etag"] == '"1"'
@@ -51,7 +52,7 @@ def test_a_label_is_read_with_dash_blanks_and_small_letters(as_operator: TestCli
     [
         ({"wire_size": "AWG 99"}, "/wire_size"),
         ({"wire_size": "42 SWG"}, "/wire_size"),
-        ({"wire_build": "tenfold"}, "/wire_size"),
+        ({"wire_build": "tenfold"}, "/wire_build"),
         ({"conductor": "unobtainium"}, "/conductor"),
         ({"supplier_lot": " "}, "/supplier_lot"),
         ({"supplier_lot": "nul\x00"}, "/supplier_lot"),
@@ -76,7 +77,7 @@ def test_a_bad_spool_is_refused_by_its_field(
 
 def test_an_unknown_wire_is_answered_with_what_is_known(as_operator: TestClient) -> None:
     size = as_operator.post(SPOOLS, json=spool(wire_size="AWG 99")).json()
-    assert (size["value"], "AWG 20 to AWG 46" in size["detail"]) == ("AWG 99 single", True)
+    assert (size["value"], "AWG 20 to AWG 46" in size["detail"]) == ("AWG 99", True)
     metal = as_operator.post(SPOOLS, json=spool(conductor="unobtainium")).json()
     assert metal["value"] == "unobtainium"
     assert "copper, aluminium" in metal["mend"]
@@ -202,7 +203,7 @@ def test_two_who_draw_at_once_add_up(as_lead: TestClient, database: Database) ->
         draws = session.scalars(sa.select(SpoolDraw.length_m)).all()
     assert length == pytest.approx(5 * 130)
     assert sorted(draws) == [30.0] * 5 + [100.0] * 5
-    assert mass == pytest.approx(650 * 1.1 * 28.154e-6, rel=1e-3)
+    assert mass == pytest.approx(650 * 29.20e-6, rel=1e-3)
     left = as_lead.get(f"{SPOOLS}/{serial}").json()
     assert left["remaining_mass_kg"] == pytest.approx(1.2 - mass)
 
@@ -237,9 +238,57 @@ def test_a_spool_is_quarantined_with_a_reason(as_bench: TestClient, database: Da
         assert verify(session)[1] is None
 
 
+def test_a_quarantine_is_ended_by_a_lead(as_bench: TestClient, as_lead: TestClient) -> None:
+    path = f"{SPOOLS}/{received(as_bench)['serial']}"
+
+    def put(client: TestClient, state: str, seen: str) -> int:
+        edit = {"state": state, "reason": "Looked at."}
+        code: int = client.patch(path, json=edit, headers={"If-Match": seen}).status_code
+        return code
+
+    assert put(as_bench, "quarantined", '"1"') == 200
+    assert put(as_bench, "quarantined", '"2"') == 409
+    assert put(as_bench, "on the shelf", '"2"') == 403
+    assert put(as_lead, "on the shelf", '"2"') == 200
+
+
+def test_a_mass_entered_wrongly_is_corrected_with_a_reason(
+    as_lead: TestClient, database: Database
+) -> None:
+    path = f"{SPOOLS}/{received(as_lead, net_mass_kg=12.0)['serial']}"
+    edit = {"net_mass_kg": 1.2, "reason": "A slip of the decimal point."}
+    answer = as_lead.patch(path, json=edit, headers={"If-Match": '"1"'})
+    assert answer.status_code == 200, answer.text
+    body = answer.json()
+    assert (body["net_mass_kg"], body["remaining_mass_kg"]) == (1.2, 1.2)
+    assert (body["supplier_lot"], body["state"]) == ("INV-2026-07", "on the shelf")
+    with database.read() as session:
+        act = session.scalars(sa.select(Act).where(Act.verb == "change spool")).one()
+        assert (act.before, act.after) == ({"net_mass_kg": 12.0}, {"net_mass_kg": 1.2})
+        assert act.reason == edit["reason"]
+
+
+def test_a_spool_that_is_thicker_than_nominal_holds_fewer_metres(as_bench: TestClient) -> None:
+    spool = received(as_bench)
+    wire = standard_wire("AWG 42", "single")
+    answer = as_bench.post(
+        f"{SPOOLS}/{spool['serial']}/measurements",
+        json=measured(resistance_ohm=wire.resistance_min, length_m=1.0, temperature_c=20.0),
+    )
+    assert answer.headers["location"] == f"{SPOOLS}/{spool['serial']}"
+    ratio = answer.json()["remaining_length_m"] / spool["remaining_length_m"]
+    # The least resistance is that of 2.6 mil instead of 2.5 mil: 8.2 % more copper.
+    assert ratio == pytest.approx(29.20 / (29.20 + 28.15 * 0.0816), rel=1e-3)
+
+
 @pytest.mark.parametrize(
     ("edit", "pointer"),
     [
+        ({"net_mass_kg": 0, "reason": "Weighed."}, "/net_mass_kg"),
+        ({"net_mass_kg": -1, "reason": "Weighed."}, "/net_mass_kg"),
+        ({"net_mass_kg": "1,2", "reason": "Weighed."}, "/net_mass_kg"),
+        ({"supplier_lot": " ", "reason": "Read again."}, "/supplier_lot"),
+        ({"wire_size": "AWG 43", "reason": "Read again."}, "/wire_size"),
         ({"state": "quarantined"}, "/reason"),
         ({"state": "quarantined", "reason": "  "}, "/reason"),
         ({"state": "lost", "reason": "Gone."}, "/state"),
