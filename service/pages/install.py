@@ -4,7 +4,7 @@ from urllib.parse import quote
 
 from fastapi import FastAPI, Request, Response
 
-from service.errors import NotSignedIn, Problem
+from service.errors import KeyReused, NotSignedIn, Problem
 from service.pages import (
     assets,
     bench,
@@ -70,4 +70,5 @@ def error_page(request: Request, problem: Problem) -> Response:
         problem=problem,
         sent=not asked,
         not_signed_in=isinstance(problem, NotSignedIn),
+        sent_before=isinstance(problem, KeyReused),
     )

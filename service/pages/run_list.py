@@ -73,9 +73,10 @@ def list_runs(
     if state in states:
         statement = statement.where(Run.state == state)
     recipes = _recipes(reading)
-    chosen = next((name for _id, name in recipes if str(_id) == recipe), "")
-    if chosen:
-        statement = statement.where(Recipe.name == chosen)
+    chosen = next((recipe_id for recipe_id, _name in recipes if str(recipe_id) == recipe), None)
+    if chosen is not None:
+        revisions = sa.select(Revision.id).where(Revision.recipe_id == chosen)
+        statement = statement.where(Run.revision_id.in_(revisions))
     if after is not None:
         statement = statement.where(Run.id < after)
     rows = [RunRow(*row) for row in reading.execute(statement)]

@@ -50,6 +50,17 @@ def test_a_double_tap_starts_once(operator: Hands) -> None:
     assert len(operator.show(serial)["attempts"]) == 1
 
 
+def test_a_form_that_was_sent_and_then_changed_is_told_apart_from_a_double_tap(
+    operator: Hands,
+) -> None:
+    serial = operator.started()
+    fields = {"idempotency_key": "one", "agreed_turns": "7600", "reason": "By eye."}
+    sent(operator.client, f"/runs/{serial}/correct", **fields)
+    page = refused(operator.client, f"/runs/{serial}/correct", **{**fields, "agreed_turns": "7500"})
+    assert page.words_of("h1") == ["This form was sent before"]
+    assert operator.show(serial)["agreed_turns"] == 7600
+
+
 def test_a_scanned_label_goes_before_the_chosen_spool(operator: Hands, floor: Floor) -> None:
     (serial,) = operator.plan()
     fields = {**start_fields(operator, serial), "spool_label": shown(floor.thinner_spool)}
@@ -169,5 +180,7 @@ def test_runs_are_listed_by_state_and_page_by_page(operator: Hands) -> None:
     assert len(page.all("a", **{"class": "serial"})) == 50
     older = next(link for link in page.all("a") if link.text == "Older")
     assert len(get(operator.client, older.attributes["href"]).all("a", **{"class": "serial"})) == 2
+    page = get(operator.client, f"/runs?recipe={operator.floor.recipe_id}&state=scrapped")
+    assert "No run is like that." in page.text
     (only,) = get(operator.client, "/runs?state=wound").words_of("a", **{"class": "serial"})
     assert only == shown(wound)

@@ -70,4 +70,4 @@ window.addEventListener("pagehide", () => stream.close());
 
 // Plans and wound coils change without a count: the floor page is read anew now and then.
 if (document.body.classList.contains("floor"))
-  setTimeout(() => document.visibilityState === "visible" && location.reload(), RELOAD_MS);
+  setInterval(() => document.visibilityState === "visible" && location.reload(), RELOAD_MS);
