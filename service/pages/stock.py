@@ -4,16 +4,17 @@ import sqlalchemy as sa
 from fastapi import APIRouter, Request, Response
 from sqlalchemy.orm import Session
 
-from service.errors import InvalidValue, NotFound
+from service.errors import InvalidValue
 from service.pages.forms import Entered, Form, FormWork
 from service.pages.numbers import CELSIUS, KILOGRAM, METRE, OHM, PERCENT
 from service.pages.render import carry_out, page, see_other
+from service.pages.shop import check_version
 from service.recipes.models import Recipe, Revision
 from service.runs.models import Attempt, Run
 from service.stock import acts
 from service.stock.models import SPOOL_STATES, MagnetLot, Spool
 from service.stock.rules import CONDUCTORS
-from service.storage.serials import read_serial, shown
+from service.storage.serials import shown
 from service.web import access
 from service.web.unit import Now, Reading, UnitRoute
 
@@ -65,13 +66,7 @@ def receive_spool(
     received: list[Spool] = []
 
     def act() -> None:
-        if not 0 < mass <= _WEIGHT_LIMIT_KG:
-            raise InvalidValue(
-                f"{mass:g} kg of wire cannot be on a spool.",
-                pointer="/net_mass_kg",
-                value=mass,
-                mend="Give the wire's mass without the spool, in kg or as in 250 g.",
-            )
+        _check_mass(mass)
         received.append(
             acts.add_spool(
                 work,
@@ -88,6 +83,16 @@ def receive_spool(
     if carry_out(work, form, act):
         return see_other(f"/stock/spools/{shown(received[0].serial)}")
     return _page(request, work, spool=form)
+
+
+def _check_mass(mass_kg: float) -> None:
+    if not 0 < mass_kg <= _WEIGHT_LIMIT_KG:
+        raise InvalidValue(
+            f"{mass_kg:g} kg of wire cannot be on a spool.",
+            pointer="/net_mass_kg",
+            value=mass_kg,
+            mend="Give the wire's mass without the spool, in kg or as in 250 g.",
+        )
 
 
 @router.post("/magnets")
@@ -126,23 +131,22 @@ def _spool_page(
     request: Request,
     session: Session,
     label: str,
-    measure: Form | None = None,
-    state: Form | None = None,
+    which: str = "",
+    form: Form | None = None,
 ) -> Response:
-    serial = read_serial(label, "spool")
-    spool = session.scalars(sa.select(Spool).where(Spool.serial == serial)).one_or_none()
-    if spool is None:
-        raise NotFound(f"There is no spool {shown(serial)}.", value=label)
-    measure_form, state_form = measure or Form(prefix="measure-"), state or Form(prefix="state-")
+    spool = acts.shown_spool(session, label)
+    forms = {name: Form(prefix=f"{name}-") for name in ("measure", "state", "receipt")}
+    if form is not None:
+        form.prefix = f"{which}-"
+        forms[which] = form
     return page(
         request,
         session,
         "spool.html",
-        status=max(measure_form.status, state_form.status),
+        status=form.status if form else 200,
         spool=spool,
         left=acts.remaining(spool),
-        measure_form=measure_form,
-        state_form=state_form,
+        forms=forms,
         states=[(one, one) for one in SPOOL_STATES],
         coils=_coils_from(session, spool),
     )
@@ -172,7 +176,6 @@ def measure_spool(
     now: Now,
 ) -> Response:
     """A measured length gives the spool its own ohm per metre."""
-    form.prefix = "measure-"
     resistance = form.number("resistance_ohm", OHM)
     length = form.number("length_m", METRE)
     temperature = form.number("temperature_c", CELSIUS)
@@ -195,7 +198,7 @@ def measure_spool(
 
     if carry_out(work, form, act):
         return see_other(f"/stock/spools/{label}")
-    return _spool_page(request, work, label, measure=form)
+    return _spool_page(request, work, label, "measure", form)
 
 
 def _check_trial(resistance: float, length: float, temperature: float, doubt: float) -> None:
@@ -223,7 +226,6 @@ def change_state(
     work: FormWork,
     now: Now,
 ) -> Response:
-    form.prefix = "state-"
     state = form.choice("state", SPOOL_STATES)
     reason = form.text("reason", 1000)
     if carry_out(
@@ -234,4 +236,29 @@ def change_state(
         ),
     ):
         return see_other(f"/stock/spools/{label}")
-    return _spool_page(request, work, label, state=form)
+    return _spool_page(request, work, label, "state", form)
+
+
+@router.post("/spools/{label}/receipt")
+def correct_receipt(
+    label: str,
+    request: Request,
+    actor: access.FloorStaff,
+    form: Entered,
+    work: FormWork,
+    now: Now,
+) -> Response:
+    """Correct what was entered on receipt; the wire itself stays what it was entered as."""
+    mass = form.number("net_mass_kg", KILOGRAM)
+    changes = {"supplier_lot": form.text("supplier_lot", 60), "net_mass_kg": mass}
+    reason = form.text("reason", 1000)
+
+    def act() -> None:
+        spool = acts.spool_by_label(work, label)
+        check_version(form, spool.version)
+        _check_mass(mass)
+        acts.correct_spool(work, actor, spool, changes=changes, reason=reason, now=now)
+
+    if carry_out(work, form, act):
+        return see_other(f"/stock/spools/{label}")
+    return _spool_page(request, work, label, "receipt", form)

@@ -61,6 +61,31 @@ def test_a_spool_is_received_and_given_its_own_resistance(as_operator: TestClien
     assert "5.410 Ω/m at 20 °C ± 1.0 %" in get(as_operator, place).text
 
 
+def test_a_slip_on_receipt_is_corrected_with_a_reason(
+    as_operator: TestClient, floor: Floor
+) -> None:
+    here = f"/stock/spools/{shown(floor.spool)}"
+    seen = get(as_operator, here).form(f"{here}/receipt").fields
+    page = refused(
+        as_operator, f"{here}/receipt", **{**seen, "net_mass_kg": "900", "reason": "Slip."}
+    )
+    assert "cannot be on a spool" in page.text
+    fields = {**seen, "net_mass_kg": "0,9", "reason": "Weighed again.", "idempotency_key": "one"}
+    assert sent(as_operator, f"{here}/receipt", **fields) == here
+    assert "0.9000 kg" in get(as_operator, here).text
+    refused(as_operator, f"{here}/receipt", 412, **{**fields, "idempotency_key": "two"})
+
+
+def test_only_a_lead_ends_a_quarantine(
+    as_operator: TestClient, as_lead: TestClient, floor: Floor
+) -> None:
+    here = f"/stock/spools/{shown(floor.spool)}/state"
+    sent(as_operator, here, state="quarantined", reason="Flakes.")
+    page = refused(as_operator, here, 403, state="on the shelf", reason="It is fine.")
+    assert "Ask a lead to end the quarantine." in page.text
+    sent(as_lead, here, state="on the shelf", reason="Only the outer layer.")
+
+
 def test_a_spool_tells_which_coils_came_from_it(operator: Hands, floor: Floor) -> None:
     serial = operator.wound()
     page = get(operator.client, f"/stock/spools/{floor.spool}")
