@@ -1,6 +1,7 @@
 """Checks of what comes in; each error names the argument and the value."""
 
 from collections.abc import Sequence
+from reprlib import repr as shorten
 from typing import TypeAlias
 
 import numpy as np
@@ -8,20 +9,34 @@ from numpy.typing import ArrayLike, NDArray
 
 Floats: TypeAlias = NDArray[np.float64]
 
+# Beyond any measured quantity, and small enough that no square or sum of squares overflows.
+_LARGEST = 1e100
+
 
 def floats(name: str, values: ArrayLike, *, at_least: int = 1, dimensions: int = 1) -> Floats:
     """The values as float64; refuses too few, another shape, and what is not a finite number."""
     try:
-        array = np.asarray(values, dtype=np.float64)
-    except (TypeError, ValueError) as error:
-        raise ValueError(f"{name}: not numbers: {values!r}") from error
+        plain = np.asarray(values)
+        # Texts, complex numbers and times would be turned into numbers without a word.
+        if plain.dtype.kind not in "biufO":
+            raise TypeError(plain.dtype)
+        array = plain.astype(np.float64)
+    except (TypeError, ValueError, OverflowError) as error:
+        raise ValueError(f"{name}: not numbers: {shorten(values)}") from error
     if array.ndim != dimensions:
-        raise ValueError(f"{name}: {dimensions} dimension(s) needed, got {array.ndim}")
+        raise ValueError(
+            f"{name}: {dimensions} dimension(s) needed, got {array.ndim}: {shorten(values)}"
+        )
     if array.shape[0] < at_least:
-        raise ValueError(f"{name}: at least {at_least} value(s) needed, got {array.shape[0]}")
+        raise ValueError(
+            f"{name}: at least {at_least} value(s) needed, got {array.shape[0]}: {shorten(values)}"
+        )
     bad = array[~np.isfinite(array)]
     if bad.size:
-        raise ValueError(f"{name}: not finite: {bad.flat[0]!r}")
+        raise ValueError(f"{name}: not finite: {float(bad.flat[0])!r}")
+    huge = array[np.abs(array) > _LARGEST]
+    if huge.size:
+        raise ValueError(f"{name}: too large to reckon with: {float(huge.flat[0])!r}")
     return array
 
 
@@ -31,10 +46,12 @@ def number(name: str, value: float) -> float:
         raise ValueError(f"{name}: not a number: {value!r}")
     try:
         result = float(value)
-    except (TypeError, ValueError) as error:
+    except (TypeError, ValueError, OverflowError) as error:
         raise ValueError(f"{name}: not a number: {value!r}") from error
     if not np.isfinite(result):
         raise ValueError(f"{name}: not finite: {value!r}")
+    if abs(result) > _LARGEST:
+        raise ValueError(f"{name}: too large to reckon with: {value!r}")
     return result
 
 
@@ -68,13 +85,19 @@ def whole(name: str, value: float, *, at_least: int = 0) -> int:
     return int(result)
 
 
-def counts(name: str, values: ArrayLike, *, at_least: int = 1, least: float = 0) -> Floats:
+def whole_numbers(name: str, values: ArrayLike, *, at_least: int = 1, least: float = 0) -> Floats:
     """Whole numbers of at least ``least``, as float64."""
     array = floats(name, values, at_least=at_least)
     bad = array[(array != np.floor(array)) | (array < least)]
     if bad.size:
-        raise ValueError(f"{name}: whole numbers of at least {least:g} needed: {bad[0]!r}")
+        raise ValueError(f"{name}: whole numbers of at least {least:g} needed: {float(bad[0])!r}")
     return array
+
+
+def single_number(values: ArrayLike) -> float | None:
+    """The number, where one stands for all; None where there is one each."""
+    plain = values.item() if isinstance(values, np.generic) else values
+    return plain if isinstance(plain, int | float) else None
 
 
 def limits(lower: float | None, upper: float | None) -> tuple[float | None, float | None]:

@@ -7,15 +7,16 @@ import numpy as np
 import scipy
 from numpy.typing import ArrayLike
 
-from service.statistics.arguments import Floats, counts, floats
+from service.statistics.arguments import Floats, floats, whole_numbers
 
 
 @dataclass(frozen=True)
 class ChangePoint:
     """``index`` is the number of values before the change; ``before`` and ``after`` are means.
 
-    ``statistic``: for "mean" the F ratio of two means against one; for "poisson" twice the
-    log-likelihood ratio of two rates against one.
+    ``statistic``: for "mean" the F ratio of two means against one (1 and n - 2 degrees of freedom;
+    infinite where both sides are constant); for "poisson" twice the log-likelihood ratio of two
+    rates against one. It is 0 for a series without any change.
     """
 
     index: int
@@ -27,13 +28,14 @@ class ChangePoint:
 def change_point(values: ArrayLike, kind: Literal["mean", "poisson"] = "mean") -> ChangePoint:
     """The single split that fits best: least squares for a mean, likelihood for Poisson counts.
 
-    At least two values. The statistic has been chosen as the greatest of many: it does not follow
+    At least two values, in order. The model is a single step: two steps or a trend are fitted by
+    one step all the same. The statistic has been chosen as the greatest of many: it does not follow
     the F or chi-square distribution of a split fixed beforehand (Hawkins, JASA 72, 1977).
     """
     if kind == "mean":
         return _mean_change(floats("values", values, at_least=2))
     if kind == "poisson":
-        return _poisson_change(counts("values", values, at_least=2))
+        return _poisson_change(whole_numbers("values", values, at_least=2))
     raise ValueError(f"kind: 'mean' or 'poisson' needed: {kind!r}")
 
 
@@ -54,10 +56,14 @@ def _mean_change(array: Floats) -> ChangePoint:
     within += float(((centred[index:] - right[split]) ** 2).sum())
     freedom = len(array) - 2
     gained = float(between[split])
-    if within > 0 and freedom > 0:
-        statistic = gained / (within / freedom)
+    # What rounding alone leaves of sums of squares that are zero.
+    rounding = len(array) * (4 * np.finfo(np.float64).eps * float(np.abs(array).max())) ** 2
+    if gained <= rounding:
+        statistic = 0.0
+    elif within <= rounding:
+        statistic = float("inf")
     else:
-        statistic = float("inf") if gained > 0 else 0.0
+        statistic = gained / (within / freedom)
     return ChangePoint(index, float(array[:index].mean()), float(array[index:].mean()), statistic)
 
 

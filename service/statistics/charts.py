@@ -1,7 +1,8 @@
 """Control charts: individuals, EWMA, CUSUM, and the attribute charts p, c and u.
 
-A point exactly on a limit is not beyond it. Control limits are the process's own voice and have
-nothing to do with a specification.
+A point exactly on a limit is not beyond it, even where rounding puts it there by its last digits.
+Control limits are the process's own voice and have nothing to do with a specification. ``signals``
+are indices from 0. All raise ValueError, naming argument and value, for what cannot be.
 """
 
 from dataclasses import dataclass
@@ -12,12 +13,14 @@ from numpy.typing import ArrayLike
 
 from service.statistics.arguments import (
     Floats,
-    counts,
     floats,
     non_negative,
     number,
     positive,
     same_length,
+    single_number,
+    whole,
+    whole_numbers,
 )
 from service.statistics.moments import mean_moving_range, summary
 
@@ -34,13 +37,16 @@ class ControlLimits:
     sigma: float
 
 
-def individuals_chart(values: ArrayLike) -> ControlLimits:
-    """Limits of an individuals chart: mean ± 3 (mean moving range / 1.128).
+def individuals_chart(values: ArrayLike, d2: float = D2_OF_TWO) -> ControlLimits:
+    """Limits of an individuals chart: mean ± 3 (mean moving range / d2).
 
-    NIST/SEMATECH e-Handbook 6.3.2.2; ISO 7870-2. At least two values.
+    ``values``: at least two, in the order of production, as the moving range sees neighbours only.
+    ``d2`` is 1.128 as printed; 2 / sqrt(pi) unrounded makes sigma smaller by 0.034 %. Limits from
+    fewer than about twenty values are themselves uncertain. NIST/SEMATECH e-Handbook 6.3.2.2;
+    ISO 7870-2.
     """
     array = floats("values", values, at_least=2)
-    sigma = mean_moving_range(array) / D2_OF_TWO
+    sigma = mean_moving_range(array) / positive("d2", d2)
     centre = summary(array).mean
     return ControlLimits(centre, centre - 3 * sigma, centre + 3 * sigma, sigma)
 
@@ -66,7 +72,9 @@ def ewma(
     """Exponentially weighted moving average: z_t = w x_t + (1 - w) z_(t-1), z_0 = target.
 
     Limits are target ± width sigma sqrt(w / (2 - w)), and for ``limits="exact"`` further times
-    sqrt(1 - (1 - w)^(2t)). NIST/SEMATECH e-Handbook 6.3.2.4; ISO 7870-6.
+    sqrt(1 - (1 - w)^(2t)): the steady ones are too wide for the first points, so a shift at the
+    start signals later. ``weight`` in (0, 1], ``sigma`` that of single values, ``width`` in sigmas
+    of the average. NIST/SEMATECH e-Handbook 6.3.2.4; ISO 7870-6.
     """
     array = floats("values", values)
     weight = positive("weight", weight)
@@ -110,7 +118,8 @@ def cusum(values: ArrayLike, target: float, slack: float, decision: float) -> Cu
     """Tabular cumulative sums from zero; ``slack`` and ``decision`` in the data's unit.
 
     high_t = max(0, high_(t-1) + x_t - target - slack), low_t = max(0, low_(t-1) + target - slack
-    - x_t). Page, Biometrika 41 (1954); ISO 7870-4.
+    - x_t). The sums go on after a signal: starting anew is the caller's decision. Page, Biometrika
+    41 (1954); ISO 7870-4.
     """
     array = floats("values", values)
     target, slack = number("target", target), non_negative("slack", slack)
@@ -121,13 +130,13 @@ def cusum(values: ArrayLike, target: float, slack: float, decision: float) -> Cu
         above = max(0.0, above + float(value) - target - slack)
         below = max(0.0, below + target - slack - float(value))
         high[index], low[index] = above, below
-    signals = [int(i) for i in np.flatnonzero((high > decision) | (low > decision))]
-    return Cusum(high, low, signals)
+    size = max(float(np.abs(array).max()), abs(target), slack)
+    return Cusum(high, low, _outside(np.maximum(high, low), 0.0, decision, size))
 
 
 @dataclass(frozen=True)
 class AttributeChart:
-    """``lower`` and ``upper`` are numbers for samples of one size, arrays where sizes differ."""
+    """``lower`` and ``upper`` are arrays, one a sample; numbers where one size serves all."""
 
     centre: float
     lower: float | Floats
@@ -138,47 +147,67 @@ class AttributeChart:
 def p_chart(defectives: ArrayLike, sizes: ArrayLike) -> AttributeChart:
     """Shares of defective units: p ± 3 sqrt(p (1 - p) / n), clipped to 0 and 1.
 
-    NIST/SEMATECH e-Handbook 6.3.3.2; ISO 7870-2.
+    ``sizes``: units inspected, one a sample, or one number for all. The normal form is poor where
+    n p is below about 5; ``funnel_limits`` is exact. NIST/SEMATECH e-Handbook 6.3.3.2; ISO 7870-2.
     """
-    bad, size = counts("defectives", defectives), counts("sizes", sizes, least=1)
-    same_length("defectives, sizes", bad, size)
+    bad = whole_numbers("defectives", defectives)
+    size: float | Floats
+    single = single_number(sizes)
+    if single is not None:
+        size = float(whole("sizes", single, at_least=1))
+    else:
+        size = whole_numbers("sizes", sizes, least=1)
+        same_length("defectives, sizes", bad, size)
     if np.any(bad > size):
-        raise ValueError(f"defectives: more than inspected: {bad[bad > size][0]!r}")
-    centre = float(bad.sum() / size.sum())
+        raise ValueError(f"defectives: more than inspected: {float(bad[bad > size][0])!r}")
+    centre = _rate(bad, size)
     reach = 3 * np.sqrt(centre * (1 - centre) / size)
     lower, upper = np.maximum(0.0, centre - reach), np.minimum(1.0, centre + reach)
-    return _attribute(centre, lower, upper, bad / size)
+    return AttributeChart(centre, lower, upper, _outside(bad / size, lower, upper))
 
 
-def c_chart(defects: ArrayLike) -> AttributeChart:
+def c_chart(counts: ArrayLike) -> AttributeChart:
     """Defects in samples of one size: c ± 3 sqrt(c), not below 0.
 
     NIST/SEMATECH e-Handbook 6.3.3.1; ISO 7870-2.
     """
-    found = counts("counts", defects)
-    centre = float(found.mean())
+    found = whole_numbers("counts", counts)
+    centre = _rate(found, 1.0)
     reach = 3 * np.sqrt(centre)
     lower, upper = float(max(0.0, centre - reach)), float(centre + reach)
     return AttributeChart(centre, lower, upper, _outside(found, lower, upper))
 
 
-def u_chart(defects: ArrayLike, sizes: ArrayLike) -> AttributeChart:
-    """Defects per unit of size: u ± 3 sqrt(u / n), not below 0; sizes need not be whole.
+def u_chart(counts: ArrayLike, sizes: ArrayLike) -> AttributeChart:
+    """Defects per unit of size: u ± 3 sqrt(u / n), not below 0.
 
+    ``sizes`` (length, area, units: need not be whole), one a sample, or one number for all.
     NIST/SEMATECH e-Handbook 6.3.3.1; ISO 7870-2.
     """
-    found, size = counts("counts", defects), floats("sizes", sizes)
-    same_length("counts, sizes", found, size)
-    if np.any(size <= 0):
-        raise ValueError(f"sizes: must be positive: {size[size <= 0][0]!r}")
-    centre = float(found.sum() / size.sum())
+    found = whole_numbers("counts", counts)
+    size: float | Floats
+    single = single_number(sizes)
+    if single is not None:
+        size = positive("sizes", single)
+    else:
+        size = floats("sizes", sizes)
+        same_length("counts, sizes", found, size)
+        if np.any(size <= 0):
+            raise ValueError(f"sizes: must be positive: {float(size[size <= 0][0])!r}")
+    centre = _rate(found, size)
     reach = 3 * np.sqrt(centre / size)
-    return _attribute(centre, np.maximum(0.0, centre - reach), centre + reach, found / size)
+    lower, upper = np.maximum(0.0, centre - reach), centre + reach
+    return AttributeChart(centre, lower, upper, _outside(found / size, lower, upper))
 
 
-def _attribute(centre: float, lower: Floats, upper: Floats, points: Floats) -> AttributeChart:
-    return AttributeChart(centre, lower, upper, _outside(points, lower, upper))
+def _rate(found: Floats, size: float | Floats) -> float:
+    return float(found.sum() / np.broadcast_to(size, found.shape).sum())
 
 
-def _outside(points: Floats, lower: float | Floats, upper: float | Floats) -> list[int]:
-    return [int(i) for i in np.flatnonzero((points < lower) | (points > upper))]
+def _outside(
+    points: Floats, lower: float | Floats, upper: float | Floats, size: float = 0.0
+) -> list[int]:
+    """Indices of points strictly outside, by more than the rounding of numbers of this size."""
+    rounding = 1e-12 * max(size, float(np.max(np.abs(lower))), float(np.max(np.abs(upper))))
+    beyond = (points < lower - rounding) | (points > upper + rounding)
+    return [int(index) for index in np.flatnonzero(beyond)]

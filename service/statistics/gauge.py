@@ -15,7 +15,8 @@ from numpy.typing import ArrayLike
 
 from service.statistics.arguments import Floats, floats
 
-# The interaction of part and operator is pooled with the error unless it is significant here.
+# The interaction of part and operator is pooled with the error unless it is significant at this
+# level, as the reference manual does.
 POOLING_LEVEL = 0.05
 # Distinct categories = 1.41 part / gauge, rounded down.
 _CATEGORIES = 1.41
@@ -23,7 +24,10 @@ _CATEGORIES = 1.41
 
 @dataclass(frozen=True)
 class GaugeStudy:
-    """All standard deviations; ``percent_gauge`` is 100 gauge / total."""
+    """All standard deviations; ``percent_gauge`` is 100 gauge / total.
+
+    ``distinct_categories`` is 1.41 part / gauge rounded down, at least 1.
+    """
 
     repeatability: float
     reproducibility: float
@@ -39,12 +43,19 @@ def gauge_study(readings: ArrayLike, method: Literal["anova", "range"] = "anova"
 
     At least two parts and two trials; with one operator the reproducibility is 0. ``anova`` pools
     an interaction that is not significant at 5 %, and takes a negative component as 0; ``range``
-    is the average-and-range method. The two differ: name the method with the result.
+    is the average-and-range method, which cannot see an interaction. The two differ: name the
+    method with the result. Few operators say little: with two, the reproducibility rests on one
+    difference. Raises ValueError for another shape, values not finite, or trials that never differ.
     """
     array = floats("readings", readings, at_least=2, dimensions=3)
     if array.shape[1] < 1 or array.shape[2] < 2:
         raise ValueError(
             f"readings: at least one operator and two trials needed, got shape {array.shape}"
+        )
+    if not np.ptp(array, axis=2).any():
+        raise ValueError(
+            "readings: no spread between trials, so the instrument's resolution is too low: "
+            f"{float(array.flat[0])!r} and so on"
         )
     if method == "anova":
         return _study(*_anova(array))
@@ -56,10 +67,6 @@ def gauge_study(readings: ArrayLike, method: Literal["anova", "range"] = "anova"
 def _study(repeatability: float, reproducibility: float, part: float) -> GaugeStudy:
     gauge = math.hypot(repeatability, reproducibility)
     total = math.hypot(gauge, part)
-    if gauge == 0:
-        raise ValueError(
-            "readings: no spread between trials; the instrument's resolution is too low"
-        )
     return GaugeStudy(
         repeatability,
         reproducibility,
@@ -87,12 +94,10 @@ def _anova(array: Floats) -> tuple[float, float, float]:
     interaction = trials * float((crossed**2).sum())
     crossed_freedom = (parts - 1) * (operators - 1)
     ms_interaction, ms_error = interaction / crossed_freedom, error / error_freedom
-    significant = (
-        ms_error > 0
-        and float(scipy.special.fdtrc(crossed_freedom, error_freedom, ms_interaction / ms_error))
-        < POOLING_LEVEL
-    )
-    if significant:
+    # Trials that differ anywhere make ms_error positive.
+    ratio = ms_interaction / ms_error
+    chance = float(scipy.special.fdtrc(crossed_freedom, error_freedom, ratio))
+    if chance < POOLING_LEVEL:
         of_interaction = max(0.0, (ms_interaction - ms_error) / trials)
         against, repeatability = ms_interaction, ms_error
     else:

@@ -6,7 +6,7 @@ import numpy as np
 import scipy
 from numpy.typing import ArrayLike
 
-from service.statistics.arguments import Floats, counts, number, share, whole
+from service.statistics.arguments import Floats, number, share, single_number, whole, whole_numbers
 
 
 def _trials(successes: float, trials: float) -> tuple[int, int]:
@@ -22,7 +22,8 @@ def wilson_interval(
 ) -> tuple[float, float]:
     """Two-sided score interval of a proportion (E. B. Wilson, JASA 22, 1927).
 
-    Keeps its coverage near the stated confidence from small numbers on; never leaves 0..1.
+    Keeps its coverage near the stated confidence on average from small numbers on, not at every
+    share. ``successes`` and ``trials`` are whole numbers. Returns (low, high) within 0..1.
     """
     good, total = _trials(successes, trials)
     z = float(scipy.special.ndtri((1 + share("confidence", confidence)) / 2))
@@ -39,7 +40,8 @@ def exact_interval(
 ) -> tuple[float, float]:
     """Two-sided exact interval of a proportion (Clopper & Pearson, Biometrika 26, 1934).
 
-    Covers at least with the stated confidence, usually more.
+    Covers at least with the stated confidence, usually more. ``successes`` and ``trials`` are whole
+    numbers; at 0 and at all trials one end is the bound itself. Returns (low, high) in 0..1.
     """
     good, total = _trials(successes, trials)
     tail = (1 - share("confidence", confidence)) / 2
@@ -54,7 +56,9 @@ def tolerance_factor(count: float, content: float, confidence: float, sides: flo
     """k such that mean ± k s (or one side) holds a share ``content`` of a normal population.
 
     One-sided by the non-central t distribution, two-sided by exact integration (ISO 16269-6
-    tabulates both). ``count`` is the number of values in the sample, at least 2.
+    tabulates both). ``count`` is the number of values in the sample, at least 2; ``content`` and
+    ``confidence`` lie between 0 and 1; ``sides`` is 1 or 2. Holds for normal values only: beyond
+    them nothing is promised about the tails.
     """
     n = whole("count", count, at_least=2)
     content, confidence = share("content", content), share("confidence", confidence)
@@ -101,34 +105,35 @@ def funnel_limits(rate: float, sizes: ArrayLike, confidence: float) -> tuple[Flo
 
     D. J. Spiegelhalter, Statistics in Medicine 24 (2005) 1185, appendix A: r is the smallest count
     with P(R <= r) > p; the limit is (r - a) / n with a = (P(R <= r) - p) / P(R = r). Clipped to
-    0..1.
+    0..1. One number for ``sizes`` gives arrays without dimension, which behave as numbers.
     """
     rate = number("rate", rate)
     if not 0 <= rate <= 1:
         raise ValueError(f"rate: must lie in 0..1: {rate!r}")
-    n = counts("sizes", sizes, least=1)
+    single = single_number(sizes)
+    n = whole_numbers("sizes", sizes if single is None else [single], least=1)
     tail = (1 - share("confidence", confidence)) / 2
-    return _binomial_quantile(tail, n, rate), _binomial_quantile(1 - tail, n, rate)
+    lower, upper = _binomial_quantile(tail, n, rate), _binomial_quantile(1 - tail, n, rate)
+    return (lower, upper) if single is None else (lower.reshape(()), upper.reshape(()))
 
 
 def _binomial_quantile(p: float, n: Floats, rate: float) -> Floats:
-    if rate in (0.0, 1.0):
-        return np.full_like(n, rate)
-    # bdtrik inverts the continuous extension: start a step below it and walk up.
-    r = np.maximum(0.0, np.floor(scipy.special.bdtrik(p, n, rate)) - 1)
     sizes = n.astype(np.int64)
-    while True:
-        below = scipy.special.bdtr(r, sizes, rate) <= p
-        if not below.any():
-            break
-        r = np.where(below, r + 1, r)
-    cumulative = scipy.special.bdtr(r, sizes, rate)
+    # Halving the span keeps P(R <= low) <= p < P(R <= high) for every size at once.
+    low, high = np.full_like(n, -1.0), n.copy()
+    while np.any(high - low > 1):
+        middle = np.floor((low + high) / 2)
+        above = scipy.special.bdtr(np.maximum(middle, 0.0), sizes, rate) > p
+        apart = high - low > 1
+        high = np.where(apart & above, middle, high)
+        low = np.where(apart & ~above, middle, low)
+    cumulative = scipy.special.bdtr(high, sizes, rate)
     mass = np.exp(
         scipy.special.gammaln(n + 1)
-        - scipy.special.gammaln(r + 1)
-        - scipy.special.gammaln(n - r + 1)
-        + scipy.special.xlogy(r, rate)
-        + scipy.special.xlog1py(n - r, -rate)
+        - scipy.special.gammaln(high + 1)
+        - scipy.special.gammaln(n - high + 1)
+        + scipy.special.xlogy(high, rate)
+        + scipy.special.xlog1py(n - high, -rate)
     )
-    limits = (r - (cumulative - p) / mass) / n
+    limits = (high - (cumulative - p) / mass) / n
     return np.asarray(np.clip(limits, 0.0, 1.0), dtype=np.float64)

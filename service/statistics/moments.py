@@ -24,7 +24,7 @@ def summary(values: ArrayLike) -> Summary:
     the mean's own rounding (Chan, Golub & LeVeque, The American Statistician 37, 1983). The
     autocorrelation is that of the NIST reference data sets:
     sum (x_t - m)(x_(t-1) - m) / sum (x_t - m)^2. A single value has spread 0, and a series
-    without spread has autocorrelation 0.
+    without spread has autocorrelation 0. Raises ValueError for no values or one not finite.
     """
     array = floats("values", values)
     count = len(array)
@@ -32,8 +32,11 @@ def summary(values: ArrayLike) -> Summary:
     residuals = array - mean
     drift = math.fsum(residuals) / count
     residuals -= drift
+    # A power of two, so that the squares of tiny residuals do not vanish and no digit is lost.
+    scale = math.ldexp(1.0, math.frexp(float(np.abs(residuals).max()))[1])
+    residuals /= scale
     squares = math.fsum(residuals**2)
-    deviation = math.sqrt(squares / (count - 1)) if count > 1 else 0.0
+    deviation = scale * math.sqrt(squares / (count - 1)) if count > 1 else 0.0
     lagged = math.fsum(residuals[1:] * residuals[:-1])
     autocorrelation = lagged / squares if squares > 0 else 0.0
     return Summary(count, mean + drift, deviation, autocorrelation)
