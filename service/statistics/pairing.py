@@ -1,13 +1,13 @@
 """Pairs of units that differ least in all, never greedily picked."""
 
-from collections.abc import Iterable
+import math
 from dataclasses import dataclass
 
-import networkx as nx
 import numpy as np
 from numpy.typing import ArrayLike
 
 from service.statistics.arguments import Floats, floats
+from service.statistics.matching import closest_pairs
 
 Pair = tuple[int, int]
 
@@ -24,21 +24,32 @@ class Pairs:
 def optimal_pairs(features: ArrayLike, weights: ArrayLike | None = None) -> Pairs:
     """The pairing with the least total difference; of an odd number one stays alone.
 
-    ``features`` is one row a unit (or a plain series for one feature); the difference of two units
-    is the Euclidean distance with each feature times its weight. One feature: sorted neighbours are
-    optimal (rearrangement inequality). Several: minimum-weight perfect matching (Edmonds 1965).
+    ``features`` is one row a unit (or a plain series for one feature), ``weights`` one number a
+    feature (1 unless given): the difference of two units is the Euclidean distance of their
+    features, each times its weight. Features in different units need weights, such as one over the
+    tolerance. Among equally good pairings one is given. One feature: sorted neighbours are optimal
+    (rearrangement inequality; Hardy, Littlewood & Pólya 1934). Several: minimum-weight perfect
+    matching (Edmonds 1965). Raises ValueError for no unit, and for numbers that are not finite.
     """
-    array = np.asarray(features, dtype=np.float64)
-    table = floats("features", array, at_least=0, dimensions=2 if array.ndim == 2 else 1)
+    table = floats("features", features, dimensions=2 if _is_table(features) else 1)
     if table.ndim == 1:
         table = table[:, None]
+    if table.shape[1] == 0:
+        raise ValueError(f"features: at least one feature a unit needed, got {table.tolist()!r}")
     scaled = table * _weights(weights, table.shape[1])
     if scaled.shape[1] == 1:
         pairs, left = _sorted_pairs(scaled[:, 0])
     else:
         pairs, left = _matched_pairs(scaled)
-    total = float(sum(np.linalg.norm(scaled[a] - scaled[b]) for a, b in pairs))
+    total = math.fsum(math.dist(scaled[a], scaled[b]) for a, b in pairs)
     return Pairs(pairs, total, left)
+
+
+def _is_table(features: ArrayLike) -> bool:
+    try:
+        return np.ndim(features) == 2
+    except ValueError:  # rows of different lengths, which floats() refuses by name
+        return False
 
 
 def _weights(weights: ArrayLike | None, features: int) -> Floats:
@@ -61,26 +72,20 @@ def _sorted_pairs(values: Floats) -> tuple[list[Pair], list[int]]:
         before = np.concatenate(([0.0], np.cumsum(gaps[0::2])))
         after = np.concatenate((np.cumsum(gaps[1::2][::-1])[::-1], [0.0]))
         left = [order.pop(2 * int(np.argmin(before + after)))]
-    pairs = [_pair(order[i], order[i + 1]) for i in range(0, len(order), 2)]
+    pairs = sorted(_pair(order[i], order[i + 1]) for i in range(0, len(order), 2))
     return pairs, left
 
 
 def _matched_pairs(table: Floats) -> tuple[list[Pair], list[int]]:
-    size = len(table)
-    distances = np.linalg.norm(table[:, None, :] - table[None, :, :], axis=2)
-    edges = [(a, b, float(distances[a, b])) for a in range(size) for b in range(a + 1, size)]
-    if size % 2:
-        edges += [(a, size, 0.0) for a in range(size)]  # whoever meets nobody stays alone
-    matched = minimum_weight_pairs(edges)
-    left = [a for a, b in matched if b == size and size % 2]
-    return [pair for pair in matched if pair[1] != size or not size % 2], left
-
-
-def minimum_weight_pairs(edges: Iterable[tuple[int, int, float]]) -> list[Pair]:
-    """The perfect matching of least weight in a graph of (node, node, weight) edges, sorted."""
-    graph: nx.Graph[int] = nx.Graph()
-    graph.add_weighted_edges_from(edges)
-    return sorted(_pair(a, b) for a, b in nx.min_weight_matching(graph))
+    units = len(table)
+    if units == 1:
+        return [], [0]
+    size = units + units % 2
+    distances = np.zeros((size, size))  # of an odd number, whoever meets the last stays alone
+    distances[:units, :units] = np.linalg.norm(table[:, None, :] - table[None, :, :], axis=2)
+    matched = closest_pairs(distances)
+    left = [a for a, b in matched if b >= units]
+    return [(a, b) for a, b in matched if b < units], left
 
 
 def _pair(a: int, b: int) -> Pair:

@@ -1,9 +1,10 @@
 """Published data sets that the statistics are checked against.
 
-Lew, Lottery, Michelso: NIST Statistical Reference Datasets, univariate (NIST ITL, 1999-2003).
+Lew, Lottery, Mavro, Michelso: NIST Statistical Reference Datasets, univariate (NIST, 1999-2003).
 FLOW_WIDTH: D. C. Montgomery, Introduction to Statistical Quality Control, table 6.1.
 GAUGE: Measurement Systems Analysis Reference Manual, 4th ed. (2010), chapter III.
 NILE: Cobb, Biometrika 65 (1978), table 1.
+COAL: disasters in British coal mines a year, 1851-1961 (Jarrett, Biometrika 66, 1979).
 """
 
 
@@ -92,3 +93,20 @@ GAUGE = [
     [[2.26, 1.99, 2.01], [1.80, 2.12, 2.19], [1.77, 1.45, 1.87]],
     [[-1.36, -1.25, -1.31], [-1.68, -1.62, -1.50], [-1.49, -1.77, -2.16]],
 ]
+
+MAVRO = numbers(
+    """
+    2.0018 2.0017 2.0018 2.0019 2.0018 2.0017 2.0015 2.0014 2.0015 2.0015 2.0017 2.0018 2.0018
+    2.0019 2.0019 2.0021 2.0020 2.0016 2.0014 2.0013 2.0013 2.0015 2.0015 2.0016 2.0015 2.0014
+    2.0013 2.0014 2.0015 2.0014 2.0015 2.0016 2.0015 2.0016 2.0019 2.0020 2.0020 2.0021 2.0022
+    2.0023 2.0024 2.0025 2.0027 2.0026 2.0026 2.0026 2.0027 2.0026 2.0025 2.0024
+    """
+)
+
+COAL = numbers(
+    """
+    4 5 4 0 1 4 3 4 0 6 3 3 4 0 2 6 3 3 5 4 5 3 1 4 4 1 5 5 3 4 2 5 2 2 3 4 2 1 3 2 2
+    1 1 1 1 3 0 0 1 0 1 1 0 0 3 1 0 3 2 2 0 1 1 1 0 1 0 1 0 0 0 2 1 0 0 0 1 1 0 2 3 3 1 1 2
+    1 1 1 1 2 4 2 0 0 1 4 0 0 0 1 0 0 0 0 0 1 0 0 1 0 1
+    """
+)
